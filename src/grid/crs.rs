@@ -1,0 +1,118 @@
+//! Coordinate reference systems: from text and from files, and back.
+
+use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, SpatialRef};
+
+use super::Crs;
+use crate::error::{Error, Result};
+
+impl Crs {
+    /// Reads a definition as a user writes it: `EPSG:32633`, WKT, or a PROJ string.
+    ///
+    /// # Errors
+    /// When the definition is not understood, or is neither geographic nor projected.
+    pub fn from_definition(text: &str) -> Result<Self> {
+        let reference = SpatialRef::from_definition(text).map_err(|source| {
+            Error::input("the coordinate system")
+                .found(format!("{text:?}, which is not understood"))
+                .wanted("a code such as EPSG:32633, WKT or a PROJ string")
+                .mend("check the code")
+                .because(source)
+        })?;
+        let mut crs = Self::from_reference(&reference)?;
+        if text.len() <= 24 {
+            crs.name = text.trim().to_uppercase();
+        }
+        Ok(crs)
+    }
+
+    /// Takes over what a file says of its own system.
+    pub(super) fn from_reference(reference: &SpatialRef) -> Result<Self> {
+        let geographic = reference.is_geographic() || reference.is_derived_geographic();
+        let title = reference.name().unwrap_or_else(|| "unnamed".into());
+        if !geographic && !reference.is_projected() {
+            return Err(Error::input("the coordinate system")
+                .found(format!("{title}, which is neither geographic nor projected"))
+                .wanted("a system that ties coordinates to places on the earth")
+                .mend("state crs for this layer in the study"));
+        }
+        let wkt = reference.to_wkt().map_err(|source| Error::input("the coordinate system").because(source))?;
+        let name = reference.authority().unwrap_or(title);
+        Ok(Self { name, wkt, geographic, metres_per_unit: if geographic { 1.0 } else { reference.linear_units() } })
+    }
+
+    /// The system for GDAL, with coordinates in the order (x or longitude, y or latitude).
+    pub(super) fn reference(&self) -> Result<SpatialRef> {
+        let mut reference = SpatialRef::from_wkt(&self.wkt)
+            .map_err(|source| Error::ours(format!("using the coordinate system {}", self.name)).because(source))?;
+        reference.set_axis_mapping_strategy(AxisMappingStrategy::TraditionalGisOrder);
+        Ok(reference)
+    }
+
+    /// The transformation of coordinates into another system.
+    pub(super) fn transform_to(&self, other: &Self) -> Result<CoordTransform> {
+        CoordTransform::new(&self.reference()?, &other.reference()?).map_err(|source| {
+            Error::input("the coordinate systems")
+                .found(format!("no way from {} to {}", self.name, other.name))
+                .wanted("two systems on the same body")
+                .because(source)
+        })
+    }
+
+    /// The UTM zone (WGS 84) of a longitude and latitude in degrees.
+    ///
+    /// # Errors
+    /// When the system cannot be built.
+    pub fn utm_at(longitude: f64, latitude: f64) -> Result<Self> {
+        let zone = (((longitude + 180.0) / 6.0).floor() as i64).rem_euclid(60) + 1;
+        let code = if latitude < 0.0 { 32700 } else { 32600 } + zone;
+        Self::from_definition(&format!("EPSG:{code}"))
+    }
+}
+
+/// Carries points from one system into another; a point that cannot be carried comes back as NaN.
+///
+/// # Errors
+/// When the two systems do not belong to one body.
+pub fn carry(points: &[(f64, f64)], from: &Crs, into: &Crs) -> Result<Vec<(f64, f64)>> {
+    let transform = from.transform_to(into)?;
+    let one = |&(x, y): &(f64, f64)| {
+        let (mut xs, mut ys) = ([x], [y]);
+        match transform.transform_coords(&mut xs, &mut ys, &mut []) {
+            Ok(()) => (xs[0], ys[0]),
+            Err(_) => (f64::NAN, f64::NAN),
+        }
+    };
+    Ok(points.iter().map(one).collect())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn codes_are_understood_and_told_apart() {
+        let utm = Crs::from_definition("epsg:32633").unwrap();
+        assert_eq!((utm.name.as_str(), utm.geographic, utm.metres_per_unit), ("EPSG:32633", false, 1.0));
+        assert!(Crs::from_definition("EPSG:4326").unwrap().geographic);
+        // EPSG:2263 is in US survey feet: 1200/3937 m (EPSG registry, unit 9003).
+        let feet = Crs::from_definition("EPSG:2263").unwrap();
+        assert!((feet.metres_per_unit - 1200.0 / 3937.0).abs() < 1e-12);
+        assert!(Crs::from_definition("EPSG:nowhere").unwrap_err().to_string().contains("not understood"));
+    }
+
+    #[test]
+    fn a_zone_is_found_from_its_place() {
+        // Zone 33 spans 12 to 18 degrees east, 56 spans 150 to 156 (definition of UTM).
+        assert_eq!(Crs::utm_at(15.0, 50.0).unwrap().name, "EPSG:32633");
+        assert_eq!(Crs::utm_at(151.0, -33.0).unwrap().name, "EPSG:32756");
+        assert_eq!(Crs::utm_at(180.0, 1.0).unwrap().name, "EPSG:32601");
+    }
+
+    #[test]
+    fn points_are_carried_in_the_order_x_y() {
+        // The central meridian of zone 33 at the equator is (500000, 0) by the definition of UTM.
+        let (geographic, utm) = (Crs::from_definition("EPSG:4326"), Crs::from_definition("EPSG:32633"));
+        let there = carry(&[(15.0, 0.0)], &geographic.unwrap(), &utm.unwrap()).unwrap();
+        assert!((there[0].0 - 500_000.0).abs() < 1e-6 && there[0].1.abs() < 1e-6, "{there:?}");
+    }
+}

@@ -1,0 +1,23 @@
+//! Grids on a common frame, and how files come onto it.
+
+mod crs;
+mod frame;
+mod mask;
+mod place;
+mod plane;
+mod raster;
+mod source;
+mod volume;
+mod warp;
+mod write;
+
+pub use crs::carry;
+pub use frame::{Crs, Frame};
+pub use mask::Mask;
+pub use place::{Placed, Resampler};
+pub use plane::Plane;
+pub use raster::Grid;
+
+pub use source::{Extent, Raster, Source};
+pub use volume::Volume;
+pub use write::write_raster;
