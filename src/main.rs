@@ -1,1 +1,7 @@
-fn main() {}
+//! The program: a thin front on the library.
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    salband::cli::main()
+}

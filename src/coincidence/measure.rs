@@ -28,6 +28,15 @@ impl Measure {
         }
     }
 
+    /// Name for people.
+    pub fn words(self) -> &'static str {
+        match self {
+            Self::Enrichment { .. } => "enrichment",
+            Self::MeanDistance => "mean distance",
+            Self::Correlation => "correlation",
+        }
+    }
+
     /// The distance, for the measures that have one.
     pub fn within(self) -> Option<f64> {
         match self {

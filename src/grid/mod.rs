@@ -1,7 +1,10 @@
 //! Grids on a common frame, and how files come onto it.
 
 mod crs;
+mod describe;
+mod distance;
 mod frame;
+mod lines;
 mod mask;
 mod place;
 mod plane;
@@ -12,7 +15,10 @@ mod warp;
 mod write;
 
 pub use crs::carry;
+pub use describe::describe_layers;
+pub use distance::distance_to_lines;
 pub use frame::{Crs, Frame};
+pub use lines::read_lines;
 pub use mask::Mask;
 pub use place::{Placed, Resampler};
 pub use plane::Plane;

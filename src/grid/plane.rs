@@ -16,6 +16,11 @@ pub struct Plane {
 }
 
 impl Plane {
+    /// A plane without slope.
+    pub fn flat(level: f64) -> Self {
+        Self { level, down: 0.0, right: 0.0, row0: 0.0, col0: 0.0 }
+    }
+
     /// The least-squares plane through the finite values, or `None` if there are none.
     ///
     /// Where the cells lie on one line, the part of the slope that they cannot tell is zero.

@@ -1,0 +1,102 @@
+//! Thinning of crest cells to chains one cell wide.
+
+use ndarray::Array2;
+
+/// The eight neighbours of a cell in order around it, as (rows, columns) of the step, from north clockwise.
+pub(super) const AROUND: [(isize, isize); 8] = [(-1, 0), (-1, 1), (0, 1), (1, 1), (1, 0), (1, -1), (0, -1), (-1, -1)];
+
+/// The set neighbours of a cell, in the order of [`AROUND`]; cells outside the array count as empty.
+pub(super) fn set_around(cells: &Array2<bool>, (row, col): (usize, usize)) -> [bool; 8] {
+    AROUND.map(|(down, across)| {
+        let place = (row.wrapping_add_signed(down), col.wrapping_add_signed(across));
+        cells.get(place).copied().unwrap_or(false)
+    })
+}
+
+/// The neighbours of a cell that are set, in the order of [`AROUND`].
+pub(super) fn neighbours(cells: &Array2<bool>, (row, col): (usize, usize)) -> Vec<(usize, usize)> {
+    let around = set_around(cells, (row, col));
+    let step = |(down, across)| (row.wrapping_add_signed(down), col.wrapping_add_signed(across));
+    AROUND.into_iter().zip(around).filter(|(_, set)| *set).map(|(by, _)| step(by)).collect()
+}
+
+/// Clears cells, the weakest first, as long as that neither breaks nor shortens a chain, until nothing changes.
+///
+/// `ordered` lists the set cells from the weakest to the strongest. A cell may go if it is simple (clearing it changes
+/// neither the number of 8-connected pieces nor of the holes between them) and is not the end of a chain. What is left is
+/// one cell wide and keeps to the strongest cells.
+///
+/// Source: ordered homotopic thinning; the crossing number of Hilditch (1969) decides whether a cell is simple.
+pub(super) fn thin(cells: &mut Array2<bool>, ordered: &[(usize, usize)]) {
+    loop {
+        let mut changed = false;
+        for &cell in ordered {
+            if cells[cell] {
+                let around = set_around(cells, cell);
+                if !is_end(around) && is_simple(around) {
+                    cells[cell] = false;
+                    changed = true;
+                }
+            }
+        }
+        if !changed {
+            return;
+        }
+    }
+}
+
+/// True at the end of a chain: one set neighbour, or two side by side, as at the end of a strip two cells wide (which
+/// would otherwise be eaten from its end).
+fn is_end(around: [bool; 8]) -> bool {
+    let count = around.iter().filter(|set| **set).count();
+    count <= 1 || (count == 2 && (0..8).any(|at| around[at] && around[(at + 1) % 8]))
+}
+
+/// True if the set neighbours form one 8-connected piece and at least one of the four sides is empty.
+fn is_simple(around: [bool; 8]) -> bool {
+    // Hilditch's crossing number: empty sides followed, within two steps around, by a set cell.
+    (0..4).filter(|side| !around[2 * side] && (around[2 * side + 1] || around[(2 * side + 2) % 8])).count() == 1
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn drawn(lines: &[&str]) -> Array2<bool> {
+        let cells: Vec<bool> = lines.iter().flat_map(|line| line.bytes().map(|byte| byte == b'#')).collect();
+        Array2::from_shape_vec((lines.len(), lines[0].len()), cells).unwrap()
+    }
+
+    fn thinned(lines: &[&str]) -> Array2<bool> {
+        let mut cells = drawn(lines);
+        let ordered: Vec<_> = cells.indexed_iter().filter(|(_, set)| **set).map(|(cell, _)| cell).collect();
+        thin(&mut cells, &ordered);
+        cells
+    }
+
+    #[test]
+    fn a_staircase_becomes_a_diagonal() {
+        let cells = thinned(&["##....", ".##...", "..##..", "...##."]);
+        assert!(cells.iter().filter(|set| **set).count() <= 5, "{cells}");
+        let ends = cells.indexed_iter().filter(|(cell, set)| **set && neighbours(&cells, *cell).len() == 1).count();
+        assert_eq!(ends, 2);
+    }
+
+    #[test]
+    fn a_strip_two_cells_wide_keeps_its_length() {
+        let cells = thinned(&["........", ".######.", ".######.", "........"]);
+        let cols: std::collections::BTreeSet<usize> =
+            cells.indexed_iter().filter(|(_, set)| **set).map(|((_, col), _)| col).collect();
+        assert_eq!(cols.len(), 6, "{cells}");
+        assert!(cells.iter().filter(|set| **set).count() <= 7, "{cells}");
+    }
+
+    #[test]
+    fn a_ring_stays_a_ring_and_a_line_stays_whole() {
+        let ring = thinned(&["......", ".####.", ".#..#.", ".####.", "......"]);
+        assert!(ring.indexed_iter().all(|(cell, set)| !*set || neighbours(&ring, cell).len() == 2), "{ring}");
+        assert!(ring.iter().any(|set| *set));
+        let line = ["......", ".####.", "......"];
+        assert_eq!(thinned(&line), drawn(&line));
+    }
+}

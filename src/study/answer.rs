@@ -1,0 +1,309 @@
+//! The answer in words, made from the tests.
+
+use super::run::Findings;
+use crate::coincidence::{Measure, Refusal, Test, Verdict};
+use crate::conductor::Side;
+use crate::evidence::{Answer, KeyFigure, depth_label, distance_label, significant};
+
+/// How a p-value is printed: never as exact where it stands at the smallest that is resolved.
+fn p_label(p: f64, smallest: f64) -> String {
+    format!("p {} {}", if p <= smallest { "<" } else { "=" }, significant(p, 2))
+}
+
+impl Findings {
+    /// How a test's family-wise p-value is printed.
+    pub(super) fn p_label(&self, test: &Test, p: f64) -> String {
+        p_label(p, self.comparison.family_smallest_p.max(test.smallest_p))
+    }
+
+    /// Depth of a test's subject, m.
+    pub(super) fn depth(&self, test: &Test) -> f64 {
+        self.slices[self.subjects[test.subject].0].depth
+    }
+
+    /// Side of a test's subject.
+    pub(super) fn side(&self, test: &Test) -> Side {
+        self.subjects[test.subject].1
+    }
+
+    /// Name of a test's reference, with its height where it has one.
+    pub(super) fn reference_label(&self, index: usize) -> String {
+        let reference = &self.references[index];
+        match (reference.potential, reference.height) {
+            (Some(_), Some(height)) if height > 0.0 => {
+                format!("{} contacts (continued up {})", reference.name, distance_label(height))
+            }
+            (Some(_), _) => format!("{} contacts", reference.name),
+            (None, _) => reference.name.clone(),
+        }
+    }
+
+    /// The distance at which a reference's enrichment is told: the one with the highest score over all depths.
+    pub(super) fn telling_distance(&self, reference: usize, side: Side) -> f64 {
+        let tests = self.comparison.tests.iter().filter(|test| {
+            test.reference == reference && self.side(test) == side && test.tested && test.score.is_finite()
+        });
+        let best = tests.filter(|test| test.measure.within().is_some()).max_by(|a, b| a.score.total_cmp(&b.score));
+        best.and_then(|test| test.measure.within()).unwrap_or(self.plan.within[0])
+    }
+
+    /// The question, in one sentence.
+    pub(super) fn question(&self) -> String {
+        let mut names: Vec<&str> = Vec::new();
+        for reference in &self.references {
+            if !names.contains(&reference.name.as_str()) {
+                names.push(&reference.name);
+            }
+        }
+        format!(
+            "Do the conductors keep to the margins in {} more closely than chance would give, at which depth and within \
+             what distance?",
+            list(&names.iter().map(|name| (*name).to_string()).collect::<Vec<_>>())
+        )
+    }
+
+    /// The answer: what was found for conductors first, then the rest.
+    pub(super) fn answer(&self) -> Answer {
+        let of_conductors = |test: &&Test| self.side(test) == Side::Conductor && test.tested;
+        let tests: Vec<&Test> = self.comparison.tests.iter().filter(of_conductors).collect();
+        let found: Vec<&Test> = tests.iter().copied().filter(|test| test.verdict == Verdict::Found).collect();
+        let enriched: Vec<&Test> = found.iter().copied().filter(|test| test.measure.within().is_some()).collect();
+        let judged: Vec<&Test> = tests.iter().copied().filter(|test| test.p_family.is_some()).collect();
+        let best = enriched.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score));
+        let (headline, figures) = match (best, found.is_empty(), judged.is_empty()) {
+            (Some(best), ..) => (self.found_headline(best, &enriched), self.key_figures(best)),
+            (None, false, _) => (self.correlation_headline(&found), Vec::new()),
+            (None, true, false) => (self.nothing_headline(&judged), self.family_figures()),
+            (None, true, true) => (
+                "The data cannot tell: no test of conductors against contacts has enough room to reach the level."
+                    .into(),
+                self.family_figures(),
+            ),
+        };
+        Answer { headline, figures, detail: self.detail(&found), limits: self.limits() }
+    }
+
+    fn found_headline(&self, best: &Test, enriched: &[&Test]) -> String {
+        let depths = self.depths(enriched.iter().copied().filter(|test| test.reference == best.reference));
+        let within = best.measure.within().unwrap_or(f64::NAN);
+        format!(
+            "Yes, at {}: conductors keep to {} more closely than chance. At {}, {} of their area lies within {} of a \
+             contact line against {} of the ground; that is {} times what displacement gives ({} with all {} tests counted).",
+            list(&depths),
+            self.reference_label(best.reference),
+            depth_label(self.depth(best)),
+            percent(best.subject_share),
+            distance_label(within),
+            percent(best.ground_share),
+            significant(best.effect, 3),
+            self.p_label(best, best.p_family.unwrap_or(1.0)),
+            self.comparison.family_tests
+        )
+    }
+
+    fn correlation_headline(&self, found: &[&Test]) -> String {
+        let best = found.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score));
+        match best {
+            None => String::new(),
+            Some(best) => format!(
+                "In part, at {}: log10 conductivity rises with the gradient strength of {} (coefficient {}, {} with all {} \
+                 tests counted), but the conductors as bodies do not lie closer to its contacts than chance.",
+                list(&self.depths(found.iter().copied())),
+                self.references[best.reference].name,
+                significant(best.observed, 2),
+                self.p_label(best, best.p_family.unwrap_or(1.0)),
+                self.comparison.family_tests
+            ),
+        }
+    }
+
+    fn nothing_headline(&self, judged: &[&Test]) -> String {
+        let family = |test: &Test| test.p_family.unwrap_or(1.0);
+        let closest = judged.iter().min_by(|a, b| family(a).total_cmp(&family(b)));
+        let least = closest.map_or_else(|| "p = 1".into(), |test| self.p_label(test, family(test)));
+        format!(
+            "No: at none of the {} depths do conductors keep to the margins more closely than chance ({} for the closest of \
+             {} tests).",
+            self.slices.len(),
+            least,
+            self.comparison.family_tests
+        )
+    }
+
+    fn key_figures(&self, best: &Test) -> Vec<KeyFigure> {
+        let within = distance_label(best.measure.within().unwrap_or(f64::NAN));
+        let mut figures = vec![
+            KeyFigure {
+                label: "Enrichment".into(),
+                value: format!("{} \u{d7}", significant(best.effect, 3)),
+                note: format!(
+                    "observed {} against {} to {} under displacement, within {within} at {}",
+                    significant(best.observed, 3),
+                    significant(best.low, 3),
+                    significant(best.high, 3),
+                    depth_label(self.depth(best))
+                ),
+            },
+            KeyFigure {
+                label: "Family-wise p".into(),
+                value: self.p_label(best, best.p_family.unwrap_or(1.0)),
+                note: format!("{} tests, one family", self.comparison.family_tests),
+            },
+        ];
+        figures.extend(self.family_figures());
+        figures
+    }
+
+    fn family_figures(&self) -> Vec<KeyFigure> {
+        vec![KeyFigure {
+            label: "Independent shifts".into(),
+            value: format!("{:.0}", self.comparison.family_independent_shifts),
+            note: format!("among {} admissible ones of the family", self.comparison.family_shifts),
+        }]
+    }
+
+    fn detail(&self, found: &[&Test]) -> Vec<String> {
+        let mut detail = Vec::new();
+        for reference in 0..self.references.len() {
+            let label = self.reference_label(reference);
+            let here = |test: &&Test| test.reference == reference;
+            let near = |test: &&Test| here(test) && test.measure.within().is_some();
+            let with_strength = |test: &&Test| here(test) && test.measure == Measure::Correlation;
+            let depths = self.depths(found.iter().copied().filter(near));
+            let correlated = self.depths(found.iter().copied().filter(with_strength));
+            detail.push(match (depths.is_empty(), correlated.is_empty()) {
+                (true, true) => format!("{}: nothing beyond chance.", capital(&label)),
+                (false, true) => {
+                    format!("{}: conductors lie closer than chance at {}.", capital(&label), list(&depths))
+                }
+                (true, false) => format!(
+                    "{}: conductivity rises with gradient strength at {}, with no closeness of the bodies themselves.",
+                    capital(&label),
+                    list(&correlated)
+                ),
+                (false, false) => format!(
+                    "{}: conductors lie closer than chance at {}; conductivity rises with gradient strength at {}.",
+                    capital(&label),
+                    list(&depths),
+                    list(&correlated)
+                ),
+            });
+        }
+        let resistors = self.comparison.tests.iter().filter(|test| self.side(test) == Side::Resistor);
+        let of_resistors: Vec<&Test> = resistors.filter(|test| test.tested).collect();
+        if !of_resistors.is_empty() {
+            let kept = of_resistors.into_iter().filter(|test| test.verdict == Verdict::Found);
+            let depths = self.depths(kept);
+            detail.push(if depths.is_empty() {
+                "Resistors lie no closer to any of the margins than chance.".into()
+            } else {
+                format!("Resistors lie closer to margins than chance at {}.", list(&depths))
+            });
+        }
+        detail
+    }
+
+    /// What limits the answer, from the guards of the tests.
+    pub(super) fn limits(&self) -> Vec<String> {
+        let mut limits = Vec::new();
+        let tests = || self.comparison.tests.iter().filter(|test| test.tested);
+        let short: Vec<&Test> =
+            tests().filter(|test| matches!(test.verdict, Verdict::CannotTell(Refusal::TooFewShifts { .. }))).collect();
+        if !short.is_empty() {
+            limits.push(format!(
+                "{} of {} tests cannot tell, because the footprint is only a few pattern widths across; they are left empty, \
+                 not counted as negative.",
+                short.len(),
+                tests().count()
+            ));
+        }
+        let other = tests().filter(|test| {
+            matches!(&test.verdict, Verdict::CannotTell(refusal) if !matches!(refusal, Refusal::TooFewShifts { .. }))
+        });
+        let other = other.count();
+        if other > 0 {
+            limits.push(format!(
+                "{other} tests cannot tell for other reasons; each row of the table coincidence says which."
+            ));
+        }
+        let bare: Vec<String> = self
+            .slices
+            .iter()
+            .filter(|slice| slice.conductors.bodies.is_empty())
+            .map(|slice| depth_label(slice.depth))
+            .collect();
+        if !bare.is_empty() {
+            limits.push(format!("No conductor beyond the threshold at {}.", list(&bare)));
+        }
+        let trends: Vec<String> = self.depths(tests().filter(|test| test.shared_trend));
+        if !trends.is_empty() {
+            limits.push(format!(
+                "At {} conductivity and gradient strength both follow a slope in one direction across the survey; a plane was \
+                 taken out of both before the correlation.",
+                list(&trends)
+            ));
+        }
+        let bare: Vec<String> = (0..self.references.len())
+            .filter(|index| self.references[*index].lines.is_empty())
+            .map(|index| self.reference_label(index))
+            .collect();
+        if !bare.is_empty() {
+            limits.push(format!("No line was found for {}.", list(&bare)));
+        }
+        limits.push(format!(
+            "A p-value below {} is not resolved by displacement and is printed as such.",
+            significant(self.comparison.family_smallest_p, 2)
+        ));
+        limits.push("No control was taken out: cover, topography or station spacing may shape both maps.".into());
+        let outside = self.deposits.iter().filter(|deposit| deposit.cell.is_none()).count();
+        if outside > 0 {
+            limits.push(format!("{outside} of {} deposits lie outside the frame.", self.deposits.len()));
+        }
+        limits
+    }
+
+    /// The depths of some tests, each once, from the shallowest down.
+    fn depths<'a>(&self, tests: impl Iterator<Item = &'a Test>) -> Vec<String> {
+        let mut depths: Vec<f64> = tests.map(|test| self.depth(test)).collect();
+        depths.sort_by(f64::total_cmp);
+        depths.dedup();
+        depths.into_iter().map(depth_label).collect()
+    }
+}
+
+/// "a", "a and b", "a, b and c".
+pub(super) fn list(items: &[String]) -> String {
+    match items {
+        [] => String::new(),
+        [only] => only.clone(),
+        [first @ .., last] => format!("{} and {last}", first.join(", ")),
+    }
+}
+
+fn percent(share: f64) -> String {
+    format!("{:.0} %", 100.0 * share)
+}
+
+fn capital(text: &str) -> String {
+    let mut letters = text.chars();
+    letters.next().map_or(String::new(), |first| first.to_uppercase().chain(letters).collect())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn small_p_values_are_never_printed_as_exact() {
+        assert_eq!(p_label(0.005, 0.005), "p < 0.005");
+        assert_eq!(p_label(0.02, 0.02), "p < 0.02");
+        assert_eq!(p_label(0.031, 0.005), "p = 0.031");
+    }
+
+    #[test]
+    fn lists_read_as_english() {
+        let items = |n: usize| ["a", "b", "c"][..n].iter().map(|s| (*s).to_string()).collect::<Vec<_>>();
+        assert_eq!([0, 1, 2, 3].map(|n| list(&items(n))), ["", "a", "a and b", "a, b and c"]);
+        assert_eq!(capital("gravity contacts"), "Gravity contacts");
+    }
+}

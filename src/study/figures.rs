@@ -1,0 +1,198 @@
+//! The figures of a run, made from the findings.
+
+use super::run::Findings;
+use crate::coincidence::{Measure, Test, Verdict};
+use crate::conductor::{Side, outlines};
+use crate::error::Result;
+use crate::evidence::{
+    Background, Colours, ContactLine, Deposit, DepthCurve, DepthRow, DistanceProfile, Figure, MapFigure, ProfilePanel,
+    ProfilePoint, depth_label, distance_label,
+};
+use crate::grid::Grid;
+
+impl Findings {
+    /// One map for each depth, over the gradient of the first potential field at its first height.
+    pub(super) fn maps(&self) -> Result<Vec<Figure>> {
+        let frame = &self.plan.frame;
+        let reference = self.references.iter().find(|reference| reference.strength.is_some());
+        let gradient = match reference.and_then(|reference| reference.strength.as_ref()) {
+            // Per kilometre, because a gradient in units per metre is a row of zeros.
+            Some(strength) => Some(strength.map(|value| 1000.0 * value)),
+            None => None,
+        };
+        let unit = reference
+            .and_then(|reference| reference.potential)
+            .map_or("", |index| self.plan.study.potentials[index].kind.unit());
+        let lines: Vec<ContactLine> = match reference {
+            Some(reference) => {
+                // A contact runs with its dense side on the right.
+                let dense = Some(crate::evidence::Side::Right);
+                reference.contacts.iter().map(|c| ContactLine { line: c.line.clone(), dense_side: dense }).collect()
+            }
+            None => {
+                let lines = self.references.iter().flat_map(|reference| &reference.lines);
+                lines.map(|line| ContactLine { line: line.clone(), dense_side: None }).collect()
+            }
+        };
+        let deposits: Vec<Deposit> = self
+            .deposits
+            .iter()
+            .filter(|deposit| deposit.cell.is_some())
+            .map(|deposit| Deposit { name: deposit.name.clone(), x: deposit.x, y: deposit.y })
+            .collect();
+        let draw = |slice: &super::run::SliceFinding| {
+            let shapes = outlines(&slice.conductors, frame);
+            let footprint = slice.placed.grid.footprint();
+            let background = gradient.as_ref().zip(reference).map(|(grid, reference): (&Grid, _)| Background {
+                grid,
+                colours: Colours::Quiet,
+                label: format!("Gradient of {}, {unit}/km", reference.name),
+            });
+            MapFigure {
+                name: format!("map_{}", slice.depth),
+                title: format!("Conductors at {}", depth_label(slice.depth)),
+                description: format!(
+                    "Map of {} conductors at {} over the gradient strength, with {} contact lines and {} deposits.",
+                    shapes.len(),
+                    depth_label(slice.depth),
+                    lines.len(),
+                    deposits.len()
+                ),
+                frame,
+                background,
+                footprint: Some(&footprint),
+                conductors: &shapes,
+                contacts: &lines,
+                deposits: &deposits,
+            }
+            .draw()
+        };
+        self.slices.iter().map(draw).collect()
+    }
+
+    /// Curves over depth and distance for each reference, each with its caption.
+    pub(super) fn curves(&self) -> Vec<(Figure, String)> {
+        let mut curves = Vec::new();
+        for reference in 0..self.references.len() {
+            let label = self.reference_label(reference);
+            let slug = match self.references[reference].height {
+                Some(height) => format!("{}_{height}", self.references[reference].name),
+                None => self.references[reference].name.clone(),
+            };
+            for side in [Side::Conductor, Side::Resistor] {
+                let tests: Vec<&Test> = self
+                    .comparison
+                    .tests
+                    .iter()
+                    .filter(|test| test.reference == reference && self.side(test) == side)
+                    .collect();
+                if tests.is_empty() {
+                    continue;
+                }
+                let bodies = match side {
+                    Side::Conductor => "Conductors",
+                    Side::Resistor => "Resistors",
+                };
+                let within = self.telling_distance(reference, side);
+                let near = |test: &&&Test| test.measure.within() == Some(within) && test.tested;
+                let caption = format!(
+                    "{bodies} within {} of {label}: share of their area over the share of the ground (dots), against the \
+                     middle 95 % of what displacement gives (bars). A filled dot is closer than chance with the whole \
+                     family counted. Of the tested distances, the one with the highest score is shown.",
+                    distance_label(within)
+                );
+                let figure = DepthCurve {
+                    name: format!("enrichment_{}_{slug}", bodies.to_lowercase()),
+                    title: format!("{bodies} near {label}"),
+                    description: caption.clone(),
+                    measure: format!("Enrichment within {} (ratio)", distance_label(within)),
+                    neutral: Some(1.0),
+                    alpha: self.plan.study.test.level,
+                    rows: tests.iter().filter(near).map(|test| self.depth_row(test)).collect(),
+                };
+                curves.push((figure.draw(), caption));
+                let caption = format!(
+                    "{bodies} within a growing distance of {label}, at each depth; the band is pointwise. Only the tested \
+                     distances carry a p-value."
+                );
+                let profile = DistanceProfile {
+                    name: format!("profile_{}_{slug}", bodies.to_lowercase()),
+                    title: format!("{bodies}: how near to {label}"),
+                    description: caption.clone(),
+                    measure: "Enrichment (ratio)".into(),
+                    neutral: Some(1.0),
+                    alpha: self.plan.study.test.level,
+                    selected_m: None,
+                    panels: self.panels(&tests),
+                };
+                curves.push((profile.draw(), caption));
+            }
+            let correlated: Vec<&Test> = self
+                .comparison
+                .tests
+                .iter()
+                .filter(|test| test.reference == reference && test.measure == Measure::Correlation)
+                .collect();
+            if !correlated.is_empty() {
+                let name = &self.references[reference].name;
+                let caption = format!(
+                    "Correlation of log10 conductivity with the gradient strength of {name}, a plane taken out of both, \
+                     against the middle 95 % of what displacement gives."
+                );
+                let figure = DepthCurve {
+                    name: format!("correlation_{slug}"),
+                    title: format!("Conductivity and the gradient behind {label}"),
+                    description: caption.clone(),
+                    measure: "Correlation (coefficient)".into(),
+                    neutral: Some(0.0),
+                    alpha: self.plan.study.test.level,
+                    rows: correlated.into_iter().map(|test| self.depth_row(test)).collect(),
+                };
+                curves.push((figure.draw(), caption));
+            }
+        }
+        curves
+    }
+
+    fn depth_row(&self, test: &Test) -> DepthRow {
+        let finite = |value: f64| value.is_finite().then_some(value);
+        DepthRow {
+            depth_m: self.depth(test),
+            observed: finite(test.observed),
+            null_low: finite(test.low),
+            null_mean: finite(test.expected),
+            null_high: finite(test.high),
+            p_family: test.p_family,
+            label: match (test.p_family, &test.verdict) {
+                (Some(p), _) => self.p_label(test, p),
+                (None, Verdict::CannotTell(_)) => "cannot tell".into(),
+                (None, _) => String::new(),
+            },
+        }
+    }
+
+    /// One panel of the profile for each depth, distances ascending.
+    fn panels(&self, tests: &[&Test]) -> Vec<ProfilePanel> {
+        let mut panels: Vec<ProfilePanel> = Vec::new();
+        for test in tests {
+            let Some(within) = test.measure.within() else { continue };
+            let row = self.depth_row(test);
+            let point = ProfilePoint {
+                within_m: within,
+                observed: row.observed,
+                null_low: row.null_low,
+                null_mean: row.null_mean,
+                null_high: row.null_high,
+                p_family: row.p_family,
+            };
+            match panels.iter_mut().find(|panel| panel.depth_m == row.depth_m) {
+                Some(panel) => panel.points.push(point),
+                None => panels.push(ProfilePanel { depth_m: row.depth_m, points: vec![point] }),
+            }
+        }
+        for panel in &mut panels {
+            panel.points.sort_by(|a, b| a.within_m.total_cmp(&b.within_m));
+        }
+        panels
+    }
+}

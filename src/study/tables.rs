@@ -1,0 +1,396 @@
+//! The evidence tables, made from the findings.
+
+use super::run::{Findings, SliceFinding};
+use crate::coincidence::{Measure, Test};
+use crate::conductor::{Body, Side};
+use crate::evidence::{Column, Table};
+use crate::grid::{Grid, Placed};
+
+/// Name of the null in tables.
+const NULL_NAME: &str = "shifts without wrapping, variance-corrected";
+
+/// A number, or an empty cell where it is not one.
+fn finite(value: f64) -> Option<f64> {
+    value.is_finite().then_some(value)
+}
+
+fn side_name(side: Side) -> &'static str {
+    match side {
+        Side::Conductor => "conductors",
+        Side::Resistor => "resistors",
+    }
+}
+
+/// A column of numbers from a list of anything.
+fn number<T>(name: &str, unit: &str, meaning: &str, rows: &[T], value: impl Fn(&T) -> Option<f64>) -> Column {
+    Column::number(name, unit, meaning, rows.iter().map(value))
+}
+
+fn count<T>(name: &str, unit: &str, meaning: &str, rows: &[T], value: impl Fn(&T) -> usize) -> Column {
+    Column::count(name, unit, meaning, rows.iter().map(|row| i64::try_from(value(row)).ok()))
+}
+
+fn text<T>(name: &str, meaning: &str, rows: &[T], value: impl Fn(&T) -> String) -> Column {
+    Column::text(name, meaning, rows.iter().map(value))
+}
+
+impl Findings {
+    /// All tables, in the order in which they are shown.
+    pub(super) fn tables(&self) -> Vec<Table> {
+        let mut tables = vec![self.coincidence_table(), self.profile_table(), self.bodies_table(Side::Conductor)];
+        if self.plan.study.conductivity.resistors.is_some() {
+            tables.push(self.bodies_table(Side::Resistor));
+        }
+        tables.push(self.contacts_table());
+        if !self.deposits.is_empty() {
+            tables.push(self.deposits_table());
+        }
+        tables.push(self.layers_table());
+        tables
+    }
+
+    /// What a test's subject is called: for the correlation it is the conductivity itself.
+    fn subject_name(&self, test: &Test) -> &'static str {
+        match test.measure {
+            Measure::Correlation => "log10 conductivity",
+            _ => side_name(self.side(test)),
+        }
+    }
+
+    fn reference_name(&self, test: &Test) -> String {
+        let reference = &self.references[test.reference];
+        match (test.measure, reference.potential) {
+            (Measure::Correlation, _) => format!("{} gradient", reference.name),
+            (_, Some(_)) => format!("{} contacts", reference.name),
+            (_, None) => reference.name.clone(),
+        }
+    }
+
+    fn coincidence_table(&self) -> Table {
+        let rows: Vec<&Test> = self.comparison.tests.iter().filter(|test| test.tested).collect();
+        let rows = rows.as_slice();
+        Table {
+            name: "coincidence".into(),
+            caption: "One row for each test of a subject against a reference.".into(),
+            columns: vec![
+                number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
+                text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
+                text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
+                number(
+                    "height_m",
+                    "m",
+                    "Height of upward continuation before contacts are picked; empty for mapped lines",
+                    rows,
+                    |t| self.references[t.reference].height,
+                ),
+                text(
+                    "measure",
+                    "enrichment: share of the subject within the distance over the share of all cells within it; \
+                     mean_distance: mean capped distance of the subject to the nearest line, m; \
+                     correlation: Pearson's coefficient, a plane taken out of both",
+                    rows,
+                    |t| t.measure.name().into(),
+                ),
+                number("within_m", "m", "The distance of the enrichment", rows, |t| t.measure.within()),
+                number("observed", "own scale", "The measure as observed: ratio, metres or coefficient", rows, |t| {
+                    finite(t.observed)
+                }),
+                number("expected", "own scale", "Its mean over all admissible shifts", rows, |t| finite(t.expected)),
+                number(
+                    "effect",
+                    "own scale",
+                    "Observed over expected for enrichment, observed less expected otherwise",
+                    rows,
+                    |t| finite(t.effect),
+                ),
+                number("null_low", "own scale", "2.5 % point of the measure over the shifts", rows, |t| finite(t.low)),
+                number("null_high", "own scale", "97.5 % point of the measure over the shifts", rows, |t| {
+                    finite(t.high)
+                }),
+                number(
+                    "p",
+                    "",
+                    "One-sided p-value of this test alone, not below smallest_p; empty where the data cannot tell",
+                    rows,
+                    |t| t.p,
+                ),
+                number(
+                    "p_family",
+                    "",
+                    "p-value with the whole family counted; empty where the data cannot tell or the measure is outside it",
+                    rows,
+                    |t| t.p_family,
+                ),
+                number(
+                    "independent_shifts",
+                    "",
+                    "Effectively independent shifts among the admissible ones",
+                    rows,
+                    |t| (t.shifts > 0).then_some(t.independent_shifts),
+                ),
+                number("smallest_p", "", "Smallest p-value that this footprint resolves", rows, |t| {
+                    (t.shifts > 0).then_some(t.smallest_p)
+                }),
+                count("shifts", "", "Admissible shifts where the measure is defined", rows, |t| t.shifts),
+                number("subject_share", "", "Share of the subject's cells within the distance", rows, |t| {
+                    finite(t.subject_share)
+                }),
+                number("ground_share", "", "Share of all cells within the distance", rows, |t| finite(t.ground_share)),
+                count(
+                    "subject_cells",
+                    "cells",
+                    "Cells of the subject where the reference has data; for the correlation, all cells",
+                    rows,
+                    |t| t.subject_cells,
+                ),
+                count("footprint_cells", "cells", "Cells where both have data", rows, |t| t.footprint_cells),
+                text("null", "How the subject was displaced", rows, |_| NULL_NAME.into()),
+                text("control", "Layers taken out beforehand", rows, |_| "none".into()),
+                text("verdict", "What may be said", rows, |t| t.verdict.to_string()),
+            ],
+        }
+    }
+
+    fn profile_table(&self) -> Table {
+        let mut rows: Vec<&Test> =
+            self.comparison.tests.iter().filter(|test| test.measure.within().is_some()).collect();
+        let within = |test: &Test| test.measure.within().unwrap_or(0.0);
+        rows.sort_by(|a, b| {
+            (a.subject, a.reference).cmp(&(b.subject, b.reference)).then(within(a).total_cmp(&within(b)))
+        });
+        let rows = rows.as_slice();
+        Table {
+            name: "distance_profile".into(),
+            caption:
+                "Enrichment against distance, with the pointwise null band; only the rows marked as tested belong to \
+                      the family."
+                    .into(),
+            columns: vec![
+                number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
+                text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
+                text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
+                number("height_m", "m", "Height of upward continuation; empty for mapped lines", rows, |t| {
+                    self.references[t.reference].height
+                }),
+                number("within_m", "m", "The distance", rows, |t| t.measure.within()),
+                text("tested", "Whether this distance belongs to the family of tests", rows, |t| {
+                    if t.tested { "yes" } else { "no" }.into()
+                }),
+                number("subject_share", "", "Share of the subject's cells within the distance", rows, |t| {
+                    finite(t.subject_share)
+                }),
+                number("ground_share", "", "Share of all cells within the distance", rows, |t| finite(t.ground_share)),
+                number("enrichment", "", "The first share over the second", rows, |t| finite(t.observed)),
+                number("null_mean", "", "Mean enrichment over all admissible shifts", rows, |t| finite(t.expected)),
+                number("null_low", "", "2.5 % point of the enrichment over the shifts", rows, |t| finite(t.low)),
+                number("null_high", "", "97.5 % point of the enrichment over the shifts", rows, |t| finite(t.high)),
+                number("p_family", "", "p-value with the whole family counted, for tested distances", rows, |t| {
+                    t.p_family
+                }),
+            ],
+        }
+    }
+
+    /// (slice, body) for all bodies of one side, from the shallowest down.
+    pub(super) fn bodies(&self, side: Side) -> Vec<(&SliceFinding, &Body)> {
+        let mut all = Vec::new();
+        for slice in &self.slices {
+            if let Some(bodies) = slice.side(side) {
+                all.extend(bodies.bodies.iter().map(|body| (slice, body)));
+            }
+        }
+        all
+    }
+
+    /// Fields of bodies, for the table and for the map layer.
+    pub(super) fn body_columns(&self, side: Side) -> Vec<Column> {
+        let rows = self.bodies(side);
+        let rows = rows.as_slice();
+        let extreme = match side {
+            Side::Conductor => "Lowest resistivity in the body",
+            Side::Resistor => "Highest resistivity in the body",
+        };
+        vec![
+            number("depth_m", "m", "Depth of the slice, positive down", rows, |(slice, _)| Some(slice.depth)),
+            count("body", "", "Number of the body in its slice, the largest first", rows, |(_, body)| body.id as usize),
+            count("cells", "cells", "Cells of the body", rows, |(_, body)| body.cells),
+            number("area_km2", "km2", "Area of the body", rows, |(_, body)| Some(body.area_m2 / 1e6)),
+            number("mean_resistivity_ohm_m", "ohm m", "Geometric mean of the resistivity", rows, |(_, body)| {
+                finite(10f64.powf(body.mean_log10))
+            }),
+            number("peak_resistivity_ohm_m", "ohm m", extreme, rows, |(_, body)| finite(10f64.powf(body.peak_log10))),
+            number("peak_x_m", "m", "Easting of that cell", rows, |(_, body)| Some(body.peak.0)),
+            number("peak_y_m", "m", "Northing of that cell", rows, |(_, body)| Some(body.peak.1)),
+            number("x_m", "m", "Easting of the centroid", rows, |(_, body)| Some(body.centroid.0)),
+            number("y_m", "m", "Northing of the centroid", rows, |(_, body)| Some(body.centroid.1)),
+            number("axis_m", "m", "Length of the principal axis", rows, |(_, body)| {
+                let delta = body.axis.end - body.axis.start;
+                finite(delta.x.hypot(delta.y))
+            }),
+            number(
+                "strike_deg",
+                "degrees",
+                "Strike of the principal axis, clockwise from grid north",
+                rows,
+                |(_, body)| finite(body.strike_deg),
+            ),
+            number("elongation", "", "Longer principal axis over the shorter one", rows, |(_, body)| {
+                finite(body.elongation)
+            }),
+        ]
+    }
+
+    fn bodies_table(&self, side: Side) -> Table {
+        let name = side_name(side);
+        Table {
+            name: name.into(),
+            caption: format!("The {name} of each slice: connected bodies beyond the threshold."),
+            columns: self.body_columns(side),
+        }
+    }
+
+    /// Fields of contacts, for the table and for the map layer: one row for each contact or mapped line.
+    pub(super) fn contact_columns(&self) -> Vec<Column> {
+        let mut rows = Vec::new();
+        for reference in self.references.iter().filter(|reference| reference.potential.is_some()) {
+            rows.extend(reference.contacts.iter().enumerate().map(|(index, contact)| (reference, index + 1, contact)));
+        }
+        let rows = rows.as_slice();
+        vec![
+            text("reference", "The potential field", rows, |(reference, _, _)| reference.name.clone()),
+            number("height_m", "m", "Height of upward continuation", rows, |(reference, _, _)| reference.height),
+            count("contact", "", "Number of the contact, the longest first", rows, |(_, index, _)| *index),
+            number("length_m", "m", "Length along the line", rows, |(_, _, contact)| finite(contact.length_m)),
+            number("strike_deg", "degrees", "Strike, clockwise from grid north", rows, |(_, _, contact)| {
+                finite(contact.strike_deg)
+            }),
+            number(
+                "mean_gradient_per_km",
+                "field/km",
+                "Mean horizontal gradient along the line, in the unit of the field (see layers) per kilometre",
+                rows,
+                |(_, _, contact)| finite(1000.0 * contact.mean_strength),
+            ),
+            text("dense_side", "Compass point toward the higher values, or inside or outside of a ring", rows, |row| {
+                row.2.dense_side().into()
+            }),
+            number("dense_side_deg", "degrees", "Azimuth toward the higher values; empty for a ring", rows, |row| {
+                finite(row.2.dense_side_deg)
+            }),
+            text("closed", "Whether the line is a ring", rows, |(_, _, contact)| {
+                if contact.closed { "yes" } else { "no" }.into()
+            }),
+        ]
+    }
+
+    fn contacts_table(&self) -> Table {
+        Table {
+            name: "contacts".into(),
+            caption: "Contacts: traced crests of the horizontal gradient.".into(),
+            columns: self.contact_columns(),
+        }
+    }
+
+    /// Fields of deposits, for the table and for the map layer.
+    pub(super) fn deposit_columns(&self) -> Vec<Column> {
+        let rows = self.deposits.as_slice();
+        let mut columns = vec![
+            text("name", "Name of the deposit", rows, |deposit| deposit.name.clone()),
+            number("x_m", "m", "Easting in the frame's system", rows, |deposit| Some(deposit.x)),
+            number("y_m", "m", "Northing in the frame's system", rows, |deposit| Some(deposit.y)),
+            text("on_frame", "Whether it lies on the frame", rows, |deposit| {
+                if deposit.cell.is_some() { "yes" } else { "no" }.into()
+            }),
+            text("conductor_depths_m", "Depths at which it lies in a conductor, m", rows, |deposit| {
+                let inside = |slice: &&SliceFinding| deposit.cell.is_some_and(|cell| slice.conductors.mask.0[cell]);
+                let depths: Vec<String> =
+                    self.slices.iter().filter(inside).map(|slice| slice.depth.to_string()).collect();
+                depths.join("; ")
+            }),
+        ];
+        if let Some(reference) = self.references.first() {
+            columns.push(number(
+                "nearest_line_m",
+                "m",
+                "Distance of its cell to the nearest line of the first reference; empty beyond the largest distance that matters",
+                rows,
+                |deposit| {
+                    let far = reference.distance.iter().copied().fold(0.0, f64::max);
+                    deposit.cell.map(|cell| reference.distance[cell]).filter(|distance| *distance < far)
+                },
+            ));
+        }
+        columns
+    }
+
+    fn deposits_table(&self) -> Table {
+        Table {
+            name: "deposits".into(),
+            caption: "Known deposits, where they fall. Described, not tested.".into(),
+            columns: self.deposit_columns(),
+        }
+    }
+
+    fn layers_table(&self) -> Table {
+        struct Row<'a> {
+            layer: String,
+            unit: String,
+            planned: &'a super::plan::PlannedLayer,
+            placed: &'a Placed,
+        }
+        let slices = self.slices.iter().zip(&self.plan.slices).map(|(slice, planned)| Row {
+            layer: format!("resistivity at {} m", slice.depth),
+            unit: "log10 ohm m".into(),
+            planned: &planned.layer,
+            placed: &slice.placed,
+        });
+        let fields = self.plan.study.potentials.iter().zip(&self.plan.potentials).zip(&self.potentials).map(
+            |((field, planned), placed)| Row {
+                layer: format!("{} ({})", field.name, field.kind.name()),
+                unit: match field.kind {
+                    super::settings::PotentialKind::Magnetic { .. } => "nT; contacts in mGal of pseudo-gravity".into(),
+                    kind => kind.unit().into(),
+                },
+                planned: &planned.layer,
+                placed,
+            },
+        );
+        let rows: Vec<Row<'_>> = slices.chain(fields).collect();
+        let rows = rows.as_slice();
+        let frame_cells = (self.plan.frame.rows * self.plan.frame.cols) as f64;
+        let range = |grid: &Grid, high: bool| grid.range().map(|range| if high { range.1 } else { range.0 });
+        Table {
+            name: "layers".into(),
+            caption: "What was read and how it was placed on the frame.".into(),
+            columns: vec![
+                text("layer", "The layer", rows, |row| row.layer.clone()),
+                text("path", "The file, as the study names it", rows, |row| self.named(&row.planned.source.path)),
+                count("band", "", "The band, counted from 1", rows, |row| row.planned.band),
+                text("format", "The file's format", rows, |row| row.planned.format.clone()),
+                count("rows", "cells", "Rows in the file", rows, |row| row.planned.shape.0),
+                count("columns", "cells", "Columns in the file", rows, |row| row.planned.shape.1),
+                text("crs", "Coordinate system of the file", rows, |row| row.planned.crs.clone()),
+                text("crs_from", "Whether the file or the study states it", rows, |row| {
+                    if row.planned.crs_stated { "study" } else { "file" }.into()
+                }),
+                number("cell_m", "m", "Side of the file's cells, measured in the frame's system", rows, |row| {
+                    Some(row.planned.raster_cell)
+                }),
+                text("resampler", "How values moved to the frame's cells", rows, |row| {
+                    row.placed.resampler.name().into()
+                }),
+                count("cells_read", "cells", "Cells of the file that were read", rows, |row| row.placed.cells_read),
+                count("cells_with_data", "cells", "Those with a number", rows, |row| row.placed.cells_with_data),
+                count("footprint_cells", "cells", "Cells of the frame with a number", rows, |row| {
+                    row.placed.grid.footprint().count()
+                }),
+                number("footprint_share", "", "Their share of the frame", rows, |row| {
+                    Some(row.placed.grid.footprint().count() as f64 / frame_cells)
+                }),
+                number("low", "see unit", "Smallest value on the frame", rows, |row| range(&row.placed.grid, false)),
+                number("high", "see unit", "Largest value on the frame", rows, |row| range(&row.placed.grid, true)),
+                text("unit", "Unit of the values on the frame", rows, |row| row.unit.clone()),
+            ],
+        }
+    }
+}
