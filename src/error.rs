@@ -128,8 +128,9 @@ impl fmt::Display for Error {
             (None, Some(wanted)) => write!(f, ": wanted {wanted}")?,
             (None, None) => {}
         }
-        if let Some(source) = &parts.source {
-            write!(f, " ({})", source.to_string().trim_end_matches('.'))?;
+        let source = parts.source.as_ref().map(ToString::to_string).unwrap_or_default();
+        if !source.is_empty() {
+            write!(f, " ({})", source.trim_end_matches('.'))?;
         }
         write!(f, ".")?;
         if let Some(remedy) = &parts.remedy {

@@ -3,6 +3,7 @@
 use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, SpatialRef};
 
 use super::Crs;
+use super::reason::Reason;
 use crate::error::{Error, Result};
 
 impl Crs {
@@ -16,7 +17,7 @@ impl Crs {
                 .found(format!("{text:?}, which is not understood"))
                 .wanted("a code such as EPSG:32633, WKT or a PROJ string")
                 .mend("check the code")
-                .because(source)
+                .because(Reason(source))
         })?;
         let mut crs = Self::from_reference(&reference)?;
         if text.len() <= 24 {
@@ -35,15 +36,16 @@ impl Crs {
                 .wanted("a system that ties coordinates to places on the earth")
                 .mend("state crs for this layer in the study"));
         }
-        let wkt = reference.to_wkt().map_err(|source| Error::input("the coordinate system").because(source))?;
+        let wkt = reference.to_wkt().map_err(|source| Error::input("the coordinate system").because(Reason(source)))?;
         let name = reference.authority().unwrap_or(title);
         Ok(Self { name, wkt, geographic, metres_per_unit: if geographic { 1.0 } else { reference.linear_units() } })
     }
 
     /// The system for GDAL, with coordinates in the order (x or longitude, y or latitude).
     pub(super) fn reference(&self) -> Result<SpatialRef> {
-        let mut reference = SpatialRef::from_wkt(&self.wkt)
-            .map_err(|source| Error::ours(format!("using the coordinate system {}", self.name)).because(source))?;
+        let mut reference = SpatialRef::from_wkt(&self.wkt).map_err(|source| {
+            Error::ours(format!("using the coordinate system {}", self.name)).because(Reason(source))
+        })?;
         reference.set_axis_mapping_strategy(AxisMappingStrategy::TraditionalGisOrder);
         Ok(reference)
     }
@@ -54,7 +56,7 @@ impl Crs {
             Error::input("the coordinate systems")
                 .found(format!("no way from {} to {}", self.name, other.name))
                 .wanted("two systems on the same body")
-                .because(source)
+                .because(Reason(source))
         })
     }
 

@@ -6,6 +6,7 @@ use gdal::vector::LayerAccess;
 use gdal::{Dataset, DatasetOptions, GdalOpenFlags};
 use geo::{BoundingRect, Coord, Geometry, Intersects, LineString, Polygon, Rect, coord};
 
+use super::reason::Reason;
 use super::source::silence_gdal;
 use super::{Crs, Frame, carry};
 use crate::error::{Error, Result};
@@ -48,7 +49,7 @@ fn read(
             .found("something that GDAL cannot open as a vector file")
             .wanted("lines in GeoPackage, GeoJSON, shapefile or the like")
             .mend("check that the file is whole")
-            .because(source)
+            .because(Reason(source))
     })?;
     let mut chosen = match layer {
         Some(name) => dataset.layer_by_name(name),
@@ -59,7 +60,7 @@ fn read(
         Error::input("the layer")
             .found(format!("no {}", layer.map_or("layer at all".into(), |name| format!("{name:?}"))))
             .wanted(format!("one of: {}", names.join(", ")))
-            .because(source)
+            .because(Reason(source))
     })?;
     let crs = match (stated, chosen.spatial_ref()) {
         (Some(stated), _) => Crs::from_definition(stated)?,
@@ -75,7 +76,10 @@ fn read(
     for feature in chosen.features() {
         let Some(geometry) = feature.geometry() else { continue };
         let geometry = geometry.to_geo().map_err(|source| {
-            Error::input("a line").found("a shape that cannot be read").wanted("lines or polygons").because(source)
+            Error::input("a line")
+                .found("a shape that cannot be read")
+                .wanted("lines or polygons")
+                .because(Reason(source))
         })?;
         collect(geometry, &mut lines);
     }

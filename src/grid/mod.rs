@@ -9,6 +9,7 @@ mod mask;
 mod place;
 mod plane;
 mod raster;
+mod reason;
 mod source;
 mod volume;
 mod warp;

@@ -4,6 +4,7 @@ use gdal::raster::Buffer;
 use gdal::{Dataset, DriverManager};
 use ndarray::{Array2, Zip, s};
 
+use super::reason::Reason;
 use super::source::{Extent, Raster, Window};
 use super::warp::warp;
 use super::{Crs, Frame, Grid};
@@ -129,7 +130,7 @@ impl Raster {
         let position = [frame.west, frame.cell, 0.0, frame.north, 0.0, -frame.cell];
         let mut target = in_memory(Array2::from_elem(frame.shape(), f64::NAN), position, &frame.crs)?;
         warp(&source, &mut target, resampler)?;
-        let failed = |source: gdal::errors::GdalError| Error::ours("reading what was placed").because(source);
+        let failed = |source: gdal::errors::GdalError| Error::ours("reading what was placed").because(Reason(source));
         let size = (frame.cols, frame.rows);
         let band = target.rasterband(1).map_err(failed)?;
         let buffer = band.read_as::<f64>((0, 0), size, size, None).map_err(failed)?;
@@ -140,7 +141,7 @@ impl Raster {
 
 /// A raster in memory that holds an array, with NaN as no-data.
 fn in_memory(values: Array2<f64>, transform: [f64; 6], crs: &Crs) -> Result<Dataset> {
-    let failed = |source: gdal::errors::GdalError| Error::ours("holding a raster in memory").because(source);
+    let failed = |source: gdal::errors::GdalError| Error::ours("holding a raster in memory").because(Reason(source));
     let (rows, cols) = values.dim();
     let driver = DriverManager::get_driver_by_name("MEM").map_err(failed)?;
     let mut dataset = driver.create_with_band_type::<f64, _>("", cols, rows, 1).map_err(failed)?;

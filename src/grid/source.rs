@@ -5,6 +5,7 @@ use std::path::{Path, PathBuf};
 use gdal::{Dataset, Metadata};
 use ndarray::Array2;
 
+use super::reason::Reason;
 use super::{Crs, Frame};
 use crate::error::{Error, Result};
 
@@ -113,7 +114,7 @@ impl Extent {
                 .found(format!("{bounds:?} in {}, which has no place in {}", from.name, into.name))
                 .wanted("an area that both systems cover")
                 .mend("check the coordinate system of the layer and of the frame")
-                .because(source)
+                .because(Reason(source))
         })?;
         if carried.iter().any(|bound| !bound.is_finite()) {
             return Err(Error::input("the extent")
@@ -158,7 +159,7 @@ impl Source {
                 .found("something that GDAL cannot open as a raster")
                 .wanted("a raster such as GeoTIFF, ESRI ASCII grid, VRT or NetCDF")
                 .mend("check that the file is whole and of a raster format")
-                .because(source)
+                .because(Reason(source))
         })?;
         if dataset.raster_count() == 0 {
             return match inner {
@@ -195,7 +196,7 @@ impl Source {
 
     fn describe(&self, dataset: Dataset) -> Result<Raster> {
         let (cols, rows) = dataset.raster_size();
-        let first = dataset.rasterband(1).map_err(|source| Error::input("the first band").because(source))?;
+        let first = dataset.rasterband(1).map_err(|source| Error::input("the first band").because(Reason(source)))?;
         let transform = dataset.geo_transform().unwrap_or([0.0, 1.0, 0.0, 0.0, 0.0, 1.0]);
         let determinant = transform[1] * transform[5] - transform[2] * transform[4];
         let unplaced = transform == [0.0, 1.0, 0.0, 0.0, 0.0, 1.0];
@@ -326,13 +327,13 @@ impl Raster {
                 .found("data that cannot be read")
                 .wanted("a whole file")
                 .mend("copy or write the file again; it may be cut short")
-                .because(source)
+                .because(Reason(source))
         };
         if band == 0 || band > self.bands {
             return Err(Error::input("the band")
                 .file(&self.path)
                 .found(format!("band {band} asked for, {} in the file", self.bands))
-                .wanted(format!("1 to {}", self.bands))
+                .wanted(format!("a band from 1 to {}", self.bands))
                 .mend("set band"));
         }
         if window.rows.saturating_mul(window.cols) > Frame::MOST_CELLS {
@@ -381,7 +382,10 @@ impl Raster {
         let claimed = rows.saturating_mul(cols).saturating_mul(self.bands as u64);
         if claimed / MOST_COMPRESSION > held {
             return Err(Error::input("the raster's header")
-                .found(format!("{rows} x {cols} cells in {} bands claimed by a file of {held} bytes", self.bands))
+                .found(format!(
+                    "{rows} x {cols} cells in each of {} bands, claimed by a file of {held} bytes",
+                    self.bands
+                ))
                 .wanted("no more cells than the file could hold")
                 .mend("write the file again; its header is wrong or it is cut short"));
         }

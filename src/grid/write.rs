@@ -6,6 +6,7 @@ use gdal::raster::{Buffer, RasterCreationOptions};
 use gdal::{DriverManager, Metadata};
 
 use super::Grid;
+use super::reason::Reason;
 use super::source::silence_gdal;
 use crate::error::{Error, Result};
 
@@ -22,7 +23,7 @@ pub fn write_raster(path: &Path, grid: &Grid, description: &str, unit: &str) -> 
             .file(path)
             .found("a file that cannot be written")
             .wanted("a writable folder with room")
-            .because(source)
+            .because(Reason(source))
     };
     let frame = grid.frame();
     let options = RasterCreationOptions::from_iter([

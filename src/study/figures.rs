@@ -70,88 +70,95 @@ impl Findings {
         self.slices.iter().map(draw).collect()
     }
 
-    /// Curves over depth and distance for each reference, each with its caption.
+    /// Curves over depth and distance, each with its caption: conductors against each reference, then the correlations,
+    /// then resistors.
     pub(super) fn curves(&self) -> Vec<(Figure, String)> {
         let mut curves = Vec::new();
-        for reference in 0..self.references.len() {
-            let label = self.reference_label(reference);
-            let slug = match self.references[reference].height {
-                Some(height) => format!("{}_{height}", self.references[reference].name),
-                None => self.references[reference].name.clone(),
-            };
-            for side in [Side::Conductor, Side::Resistor] {
-                let tests: Vec<&Test> = self
-                    .comparison
-                    .tests
-                    .iter()
-                    .filter(|test| test.reference == reference && self.side(test) == side)
-                    .collect();
-                if tests.is_empty() {
-                    continue;
-                }
-                let bodies = match side {
-                    Side::Conductor => "Conductors",
-                    Side::Resistor => "Resistors",
-                };
-                let within = self.telling_distance(reference, side);
-                let near = |test: &&&Test| test.measure.within() == Some(within) && test.tested;
-                let caption = format!(
-                    "{bodies} within {} of {label}: share of their area over the share of the ground (dots), against the \
-                     middle 95 % of what displacement gives (bars). A filled dot is closer than chance with the whole \
-                     family counted. Of the tested distances, the one with the highest score is shown.",
-                    distance_label(within)
-                );
-                let figure = DepthCurve {
-                    name: format!("enrichment_{}_{slug}", bodies.to_lowercase()),
-                    title: format!("{bodies} near {label}"),
-                    description: caption.clone(),
-                    measure: format!("Enrichment within {} (ratio)", distance_label(within)),
-                    neutral: Some(1.0),
-                    alpha: self.plan.study.test.level,
-                    rows: tests.iter().filter(near).map(|test| self.depth_row(test)).collect(),
-                };
-                curves.push((figure.draw(), caption));
-                let caption = format!(
-                    "{bodies} within a growing distance of {label}, at each depth; the band is pointwise. Only the tested \
-                     distances carry a p-value."
-                );
-                let profile = DistanceProfile {
-                    name: format!("profile_{}_{slug}", bodies.to_lowercase()),
-                    title: format!("{bodies}: how near to {label}"),
-                    description: caption.clone(),
-                    measure: "Enrichment (ratio)".into(),
-                    neutral: Some(1.0),
-                    alpha: self.plan.study.test.level,
-                    selected_m: None,
-                    panels: self.panels(&tests),
-                };
-                curves.push((profile.draw(), caption));
-            }
-            let correlated: Vec<&Test> = self
-                .comparison
-                .tests
-                .iter()
-                .filter(|test| test.reference == reference && test.measure == Measure::Correlation)
-                .collect();
-            if !correlated.is_empty() {
-                let name = &self.references[reference].name;
-                let caption = format!(
-                    "Correlation of log10 conductivity with the gradient strength of {name}, a plane taken out of both, \
-                     against the middle 95 % of what displacement gives."
-                );
-                let figure = DepthCurve {
-                    name: format!("correlation_{slug}"),
-                    title: format!("Conductivity and the gradient behind {label}"),
-                    description: caption.clone(),
-                    measure: "Correlation (coefficient)".into(),
-                    neutral: Some(0.0),
-                    alpha: self.plan.study.test.level,
-                    rows: correlated.into_iter().map(|test| self.depth_row(test)).collect(),
-                };
-                curves.push((figure.draw(), caption));
-            }
-        }
+        let all = 0..self.references.len();
+        all.clone().for_each(|reference| curves.extend(self.body_curves(reference, Side::Conductor)));
+        curves.extend(all.clone().filter_map(|reference| self.correlation_curve(reference)));
+        all.for_each(|reference| curves.extend(self.body_curves(reference, Side::Resistor)));
         curves
+    }
+
+    /// The stem of a figure's file name for a reference.
+    fn figure_stem(&self, reference: usize) -> String {
+        let reference = &self.references[reference];
+        match reference.height {
+            Some(height) => format!("{}_{height}", reference.name),
+            None => reference.name.clone(),
+        }
+    }
+
+    /// Enrichment against depth, and against distance at each depth.
+    fn body_curves(&self, reference: usize, side: Side) -> Vec<(Figure, String)> {
+        let here = |test: &&Test| test.reference == reference && self.side(test) == side;
+        let tests: Vec<&Test> = self.comparison.tests.iter().filter(here).collect();
+        if tests.is_empty() {
+            return Vec::new();
+        }
+        let label = self.reference_label(reference);
+        let stem = self.figure_stem(reference);
+        let bodies = match side {
+            Side::Conductor => "Conductors",
+            Side::Resistor => "Resistors",
+        };
+        let within = self.telling_distance(reference, side);
+        let near = |test: &&&Test| test.measure.within() == Some(within) && test.tested;
+        let caption = format!(
+            "{bodies} within {} of {label}: share of their area over the share of the ground (dots), against the middle \
+             95 % of what displacement gives (bars). A filled dot is closer than chance with the whole family counted. Of \
+             the tested distances, the one with the highest score is shown.",
+            distance_label(within)
+        );
+        let curve = DepthCurve {
+            name: format!("enrichment_{}_{stem}", bodies.to_lowercase()),
+            title: format!("{bodies} near {label}"),
+            description: caption.clone(),
+            measure: format!("Enrichment within {} (ratio)", distance_label(within)),
+            neutral: Some(1.0),
+            alpha: self.plan.study.test.level,
+            rows: tests.iter().filter(near).map(|test| self.depth_row(test)).collect(),
+        };
+        let distances = format!(
+            "{bodies} within a growing distance of {label}, at each depth; the band is pointwise. Only the tested distances \
+             carry a p-value."
+        );
+        let profile = DistanceProfile {
+            name: format!("profile_{}_{stem}", bodies.to_lowercase()),
+            title: format!("{bodies}: how near to {label}"),
+            description: distances.clone(),
+            measure: "Enrichment (ratio)".into(),
+            neutral: Some(1.0),
+            alpha: self.plan.study.test.level,
+            selected_m: None,
+            panels: self.panels(&tests),
+        };
+        vec![(curve.draw(), caption), (profile.draw(), distances)]
+    }
+
+    /// Correlation with the gradient against depth; `None` for mapped lines, which have no gradient.
+    fn correlation_curve(&self, reference: usize) -> Option<(Figure, String)> {
+        let here = |test: &&Test| test.reference == reference && test.measure == Measure::Correlation;
+        let tests: Vec<&Test> = self.comparison.tests.iter().filter(here).collect();
+        if tests.is_empty() {
+            return None;
+        }
+        let caption = format!(
+            "Correlation of log10 conductivity with the gradient strength of {}, a plane taken out of both, against the \
+             middle 95 % of what displacement gives.",
+            self.references[reference].name
+        );
+        let figure = DepthCurve {
+            name: format!("correlation_{}", self.figure_stem(reference)),
+            title: format!("Conductivity and the gradient behind {}", self.reference_label(reference)),
+            description: caption.clone(),
+            measure: "Correlation (coefficient)".into(),
+            neutral: Some(0.0),
+            alpha: self.plan.study.test.level,
+            rows: tests.into_iter().map(|test| self.depth_row(test)).collect(),
+        };
+        Some((figure.draw(), caption))
     }
 
     fn depth_row(&self, test: &Test) -> DepthRow {

@@ -100,7 +100,7 @@ impl Place<'_> {
             return located("a key")
                 .found(format!("no {name:?}"))
                 .wanted("it, since it has no default")
-                .mend(format!("add {name} = ..."));
+                .mend(format!("add a line {name} = ... here"));
         }
         located("the study file").found(message.trim().replace('\n', "; ")).wanted("a valid value here")
     }

@@ -90,7 +90,7 @@ impl Seen {
             return Err(Error::input("the band")
                 .file(&source.path)
                 .found(format!("band {band} asked for, {} in the file", raster.bands))
-                .wanted(format!("1 to {}", raster.bands))
+                .wanted(format!("a band from 1 to {}", raster.bands))
                 .mend("set band"));
         }
         Ok(Self { source: source.clone(), band, raster })

@@ -122,7 +122,8 @@ fn place_slices(plan: &Plan, progress: &dyn Progress) -> Result<Vec<SliceFinding
         let raster = slice.layer.source.open()?;
         let quantity = study.conductivity.quantity;
         let placed = raster.place(slice.layer.band, &plan.frame, |values| quantity.to_log10_resistivity(values))?;
-        refuse_constant(&placed.grid, &format!("the slice at {} m", slice.depth)).map_err(|error| error.file(path))?;
+        refuse_constant(&placed.grid, &format!("the slice at {} m, in log10 ohm m", slice.depth))
+            .map_err(|error| error.file(path))?;
         let find = |choice: &BodyChoice, side, area| {
             find_bodies(&placed.grid, side, choice.threshold, area, study.seed).map_err(|error| error.file(path))
         };
