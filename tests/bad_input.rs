@@ -14,32 +14,80 @@ struct Case {
 fn cases() -> Vec<Case> {
     let case = |name, spoil, message| Case { name, spoil, message };
     vec![
-        case("no study file", |s| std::fs::remove_file(s.path("study.toml")).unwrap(), ""),
-        case("a study that is not TOML", |s| s.study("seed = 7", "seed = = 7"), ""),
-        case("an unknown key", |s| s.study("seed = 7", "sead = 7"), ""),
-        case("an unknown key deep down", |s| s.study("kind = \"gravity\"", "knd = \"gravity\""), ""),
-        case("no title", |s| s.study("title = \"A small survey\"\n", ""), ""),
-        case("an unknown quantity", |s| s.study("quantity = \"resistivity\"", "quantity = \"ohms\""), ""),
-        case("an unknown kind", |s| s.study("kind = \"gravity\"", "kind = \"seismic\""), ""),
-        case("magnetics without angles", |s| s.study("kind = \"gravity\"", "kind = \"magnetic\""), ""),
+        case(
+            "no study file",
+            |s| std::fs::remove_file(s.path("study.toml")).unwrap(),
+            "salband: study.toml: the study file: found nothing at this path; wanted a readable TOML file. To mend it: check the path, or make one with: salband new.",
+        ),
+        case(
+            "a study that is not TOML",
+            |s| s.study("seed = 7", "seed = = 7"),
+            "salband: study.toml, line 2: the study file: found extra `=`, expected nothing; wanted a valid value here.",
+        ),
+        case(
+            "an unknown key",
+            |s| s.study("seed = 7", "sead = 7"),
+            "salband: study.toml, line 2: a key: found \"sead\", which is not known here; wanted one of: title, seed, frame, conductivity, potential, lines, control, deposits, test. To mend it: if you meant \"seed\", write that; otherwise take the key out.",
+        ),
+        case(
+            "an unknown key deep down",
+            |s| s.study("kind = \"gravity\"", "knd = \"gravity\""),
+            "salband: study.toml, line 16: a key: found \"knd\", which is not known here; wanted one of: name, path, kind, band, variable, crs, heights, inclination, declination, contacts. To mend it: if you meant \"kind\", write that; otherwise take the key out.",
+        ),
+        case(
+            "no title",
+            |s| s.study("title = \"A small survey\"\n", ""),
+            "salband: study.toml, line 1: a key: found no \"title\"; wanted it, since it has no default. To mend it: add a line title = ... here.",
+        ),
+        case(
+            "an unknown quantity",
+            |s| s.study("quantity = \"resistivity\"", "quantity = \"ohms\""),
+            "salband: study.toml, line 6: conductivity.quantity: found \"ohms\"; wanted one of: resistivity, conductivity, log10-resistivity, log10-conductivity.",
+        ),
+        case(
+            "an unknown kind",
+            |s| s.study("kind = \"gravity\"", "kind = \"seismic\""),
+            "salband: study.toml, line 16: kind: found \"seismic\"; wanted one of: gravity, magnetic, other.",
+        ),
+        case(
+            "magnetics without angles",
+            |s| s.study("kind = \"gravity\"", "kind = \"magnetic\""),
+            "salband: study.toml, line 14: potential \"gravity\": found no inclination; wanted inclination and declination in degrees, since contacts are picked on pseudo-gravity. To mend it: add inclination = ... for the place and date of the survey.",
+        ),
         case(
             "magnetics near the equator",
             |s| s.study("kind = \"gravity\"", "kind = \"magnetic\"\ninclination = 4.0\ndeclination = 1.0"),
-            "",
+            "salband: gravity.tif: the inclination of the magnetic field: found 4 degrees; wanted at least 15 degrees up or down, because reduction to the pole is unstable at low latitudes. To mend it: leave this layer out, or give it as a grid that is already reduced, with kind \"other\".",
         ),
         case(
             "the same name twice",
             |s| s.study("[test]", "[[potential]]\nname = \"gravity\"\npath = \"gravity.tif\"\n\n[test]"),
-            "",
+            "salband: study.toml, line 19: a name: found \"gravity\" a second time; wanted each potential field and line set named once. To mend it: give one of them another name.",
         ),
-        case("the same depth twice", |s| s.study("depth = 3000.0", "depth = 1000.0"), ""),
-        case("a quantile of 80", |s| s.study("quantile = 0.80", "quantile = 80.0"), ""),
-        case("a negative distance", |s| s.study("within = [500.0, 1500.0]", "within = [500.0, -1500.0]"), ""),
-        case("a level of five", |s| s.study("within = [500.0, 1500.0]", "family = 5.0"), ""),
+        case(
+            "the same depth twice",
+            |s| s.study("depth = 3000.0", "depth = 1000.0"),
+            "salband: study.toml, line 9: depth: found 1000 m a second time; wanted each depth once. To mend it: leave one of the two slices out.",
+        ),
+        case(
+            "a quantile of 80",
+            |s| s.study("quantile = 0.80", "quantile = 80.0"),
+            "salband: study.toml, line 11: conductivity.conductors.quantile: found 80; wanted a number above 0 and below 1, counted from the most resistive cell.",
+        ),
+        case(
+            "a negative distance",
+            |s| s.study("within = [500.0, 1500.0]", "within = [500.0, -1500.0]"),
+            "salband: study.toml, line 19: test.within: found -1500; wanted a positive number of metres.",
+        ),
+        case(
+            "a level of five",
+            |s| s.study("within = [500.0, 1500.0]", "family = 5.0"),
+            "salband: study.toml, line 19: test.family: found 5; wanted a level above 0 and below 1, such as 0.05.",
+        ),
         case(
             "a control",
             |s| s.file("study.toml", &format!("{STUDY}\n[[control]]\nname = \"c\"\npath = \"c.tif\"\n")),
-            "",
+            "salband: study.toml, line 21: [[control]]: found a layer to take out; wanted none, since this version cannot take controls out and would answer as if they were not there. To mend it: take [[control]] out and read the answer with the cautions on the page.",
         ),
         case(
             "no reference",
@@ -48,37 +96,81 @@ fn cases() -> Vec<Case> {
                 let end = STUDY.find("[test]").unwrap();
                 s.file("study.toml", &format!("{}{}", &STUDY[..start], &STUDY[end..]));
             },
-            "",
+            "salband: study.toml: the study: found no [[potential]] and no [[lines]]; wanted at least one reference to test the conductors against. To mend it: add a [[potential]] with name and path.",
         ),
-        case("a missing raster", |s| std::fs::remove_file(s.path("rho_3000.tif")).unwrap(), ""),
-        case("not a raster", |s| s.file("rho_3000.tif", "resistivity in words"), ""),
-        case("an empty file", |s| s.file("gravity.tif", ""), ""),
+        case(
+            "a missing raster",
+            |s| std::fs::remove_file(s.path("rho_3000.tif")).unwrap(),
+            "salband: rho_3000.tif: the file: found nothing at this path; wanted a raster file. To mend it: check the path; a relative one starts at the folder of the study file.",
+        ),
+        case(
+            "not a raster",
+            |s| s.file("rho_3000.tif", "resistivity in words"),
+            "salband: rho_3000.tif: the file: found something that GDAL cannot open as a raster; wanted a raster such as GeoTIFF, ESRI ASCII grid, VRT or NetCDF. To mend it: check that the file is whole and of a raster format.",
+        ),
+        case(
+            "an empty file",
+            |s| s.file("gravity.tif", ""),
+            "salband: gravity.tif: the file: found something that GDAL cannot open as a raster; wanted a raster such as GeoTIFF, ESRI ASCII grid, VRT or NetCDF. To mend it: check that the file is whole and of a raster format.",
+        ),
         case(
             "a truncated GeoTIFF",
             |s| {
                 let bytes = std::fs::read(s.path("gravity.tif")).unwrap();
                 std::fs::write(s.path("gravity.tif"), &bytes[..bytes.len() / 2]).unwrap();
             },
-            "",
+            "salband: gravity.tif: reading band 1: found data that cannot be read; wanted a whole file. To mend it: copy or write the file again; it may be cut short.",
         ),
         case(
             "a raster without a system",
             |s| s.raster("gravity.tif", &Raster { crs: None, ..Raster::of(&gravity) }),
-            "",
+            "salband: gravity.tif: the coordinate system: found none in the file; wanted one that places the grid on the earth. To mend it: state crs = \"EPSG:...\" beside the path in the study, if you know it.",
         ),
-        case("a frame in degrees", |s| s.study("EPSG:32633", "EPSG:4326"), ""),
-        case("a frame in feet", |s| s.study("EPSG:32633", "EPSG:2263"), ""),
-        case("a frame of nowhere", |s| s.study("EPSG:32633", "EPSG:99999999"), ""),
-        case("a cell of nothing", |s| s.study("cell = 500.0", "cell = 0.0"), ""),
-        case("a frame of too many cells", |s| s.study("cell = 500.0", "cell = 0.001"), ""),
+        case(
+            "a frame in degrees",
+            |s| s.study("EPSG:32633", "EPSG:4326"),
+            "salband: study.toml: the frame's coordinate system: found EPSG:4326, which is in degrees; wanted a projected system in metres, because distances and derivatives are taken on the frame. To mend it: set frame.crs to a projected system that suits the area, such as its UTM zone.",
+        ),
+        case(
+            "a frame in feet",
+            |s| s.study("EPSG:32633", "EPSG:2263"),
+            "salband: study.toml: the frame's coordinate system: found EPSG:2263, whose unit is 0.30480060960121924 m; wanted a projected system in metres. To mend it: set frame.crs to a metric system; layers in other units are placed onto it.",
+        ),
+        case(
+            "a frame of nowhere",
+            |s| s.study("EPSG:32633", "EPSG:99999999"),
+            "salband: study.toml: the coordinate system: found \"EPSG:99999999\", which is not understood; wanted a code such as EPSG:32633, WKT or a PROJ string. To mend it: check the code.",
+        ),
+        case(
+            "a cell of nothing",
+            |s| s.study("cell = 500.0", "cell = 0.0"),
+            "salband: study.toml, line 3: frame.cell: found 0; wanted a positive number of metres.",
+        ),
+        case(
+            "a frame of too many cells",
+            |s| s.study("cell = 500.0", "cell = 0.001"),
+            "salband: study.toml: the frame's shape: found 40000000 rows x 40000000 columns; wanted at most 268435456 cells. To mend it: choose a larger frame.cell.",
+        ),
         case(
             "disjoint extents",
             |s| s.raster("gravity.tif", &Raster { origin: (900_000.0, 5_600_000.0), ..Raster::of(&gravity) }),
-            "",
+            "salband: gravity.tif: the extent: found 900000 to 940000 east, 5560000 to 5600000 north in EPSG:32633; wanted some overlap with the conductivity model at 500000 to 540000 east, 5560000 to 5600000 north. To mend it: check the coordinate systems of both, or leave the layer out.",
         ),
-        case("a constant gravity grid", |s| s.raster("gravity.tif", &Raster::of(&|_, _| 3.5)), ""),
-        case("a constant slice", |s| s.raster("rho_1000.tif", &Raster::of(&|_, _| 100.0)), ""),
-        case("nothing but no data", |s| s.raster("rho_1000.tif", &Raster::of(&|_, _| -9999.0)), ""),
+        case(
+            "a constant gravity grid",
+            |s| s.raster("gravity.tif", &Raster::of(&|_, _| 3.5)),
+            "salband: gravity.tif: the potential field \"gravity\": found the value 3.5 in every cell that the frame covers; wanted a layer that varies. To mend it: check the file and the band.",
+        ),
+        case(
+            "a constant slice",
+            |s| s.raster("rho_1000.tif", &Raster::of(&|_, _| 100.0)),
+            "salband: rho_1000.tif: the slice at 1000 m, in log10 ohm m: found the value 2 in every cell that the frame covers; wanted a layer that varies. To mend it: check the file and the band.",
+        ),
+        case(
+            "nothing but no data",
+            |s| s.raster("rho_1000.tif", &Raster::of(&|_, _| -9999.0)),
+            "salband: rho_1000.tif: band 1: found no data in any cell that the frame covers; wanted numbers. To mend it: check the no-data value and the extent.",
+        ),
         case(
             "infinite values",
             |s| {
@@ -87,21 +179,33 @@ fn cases() -> Vec<Case> {
                     &Raster::of(&|row, col| if row == col { f64::INFINITY } else { gravity(row, col) }),
                 )
             },
-            "",
+            "salband: gravity.tif: band 1: found 80 infinite values; wanted finite numbers, or no data. To mend it: mark those cells as no data.",
         ),
         case(
             "negative resistivity",
             |s| s.raster("rho_1000.tif", &Raster::of(&|row, col| if row == 3 { -5.0 } else { resistivity(row, col) })),
-            "",
+            "salband: rho_1000.tif: resistivity: found 80 cells such as -5; wanted positive values. To mend it: check conductivity.quantity: the values may be logarithms; or mark those cells as no data.",
         ),
         case(
             "resistivity called a logarithm",
             |s| s.study("quantity = \"resistivity\"", "quantity = \"log10-resistivity\""),
-            "",
+            "salband: rho_3000.tif: log10-resistivity: found 6361 cells such as 25.074795265918222; wanted logarithms between -12 and 12. To mend it: check conductivity.quantity: the values may not be logarithms; or mark those cells as no data.",
         ),
-        case("no conductor below the threshold", |s| s.study("quantile = 0.80", "below = 0.001"), ""),
-        case("no body of the least area", |s| s.study("quantile = 0.80", "quantile = 0.80, least_area = 1e12"), ""),
-        case("a band that is not there", |s| s.study("path = \"gravity.tif\"", "path = \"gravity.tif\"\nband = 2"), ""),
+        case(
+            "no conductor below the threshold",
+            |s| s.study("quantile = 0.80", "below = 0.001"),
+            "salband: study.toml: the conductors: found no cell of any slice beyond the threshold in a body of the least area; wanted at least one conductor. To mend it: check conductivity.quantity, or change the threshold or least_area of conductors.",
+        ),
+        case(
+            "no body of the least area",
+            |s| s.study("quantile = 0.80", "quantile = 0.80, least_area = 1e12"),
+            "salband: study.toml: the conductors: found no cell of any slice beyond the threshold in a body of the least area; wanted at least one conductor. To mend it: check conductivity.quantity, or change the threshold or least_area of conductors.",
+        ),
+        case(
+            "a band that is not there",
+            |s| s.study("path = \"gravity.tif\"", "path = \"gravity.tif\"\nband = 2"),
+            "salband: gravity.tif: the band: found band 2 asked for, 1 in the file; wanted a band from 1 to 1. To mend it: set band.",
+        ),
         case(
             "a header of too many cells",
             |s| {
@@ -109,7 +213,7 @@ fn cases() -> Vec<Case> {
                 s.file("gravity.asc", header);
                 s.study("path = \"gravity.tif\"", "path = \"gravity.asc\"\ncrs = \"EPSG:32633\"");
             },
-            "",
+            "salband: gravity.asc: the raster's header: found 40000 x 40000 cells in each of 1 bands, claimed by a file of 76 bytes; wanted no more cells than the file could hold. To mend it: write the file again; its header is wrong or it is cut short.",
         ),
         case(
             "deposits without the columns",
@@ -117,7 +221,7 @@ fn cases() -> Vec<Case> {
                 s.file("deposits.csv", "site,lon,lat\nA,15.1,50.5\n");
                 s.study("[test]", "[deposits]\npath = \"deposits.csv\"\n\n[test]");
             },
-            "",
+            "salband: deposits.csv: the table's columns: found no \"longitude\" among site, lon, lat; wanted columns for x, y and name. To mend it: set deposits.columns = { x = \"...\", y = \"...\", name = \"...\" }.",
         ),
         case(
             "a deposit at no number",
@@ -125,7 +229,7 @@ fn cases() -> Vec<Case> {
                 s.file("deposits.csv", "name,longitude,latitude\nA,15.1,50.5\nB,east,50.5\n");
                 s.study("[test]", "[deposits]\npath = \"deposits.csv\"\n\n[test]");
             },
-            "",
+            "salband: deposits.csv, line 3: column \"longitude\": found \"east\"; wanted a number.",
         ),
         case(
             "lines that are no lines",
@@ -133,7 +237,7 @@ fn cases() -> Vec<Case> {
                 s.file("faults.geojson", "{\"type\": \"FeatureCollection\"");
                 s.study("[test]", "[[lines]]\nname = \"faults\"\npath = \"faults.geojson\"\n\n[test]");
             },
-            "",
+            "salband: faults.geojson: the file: found something that GDAL cannot open as a vector file; wanted lines in GeoPackage, GeoJSON, shapefile or the like. To mend it: check that the file is whole.",
         ),
     ]
 }
@@ -179,16 +283,40 @@ fn an_output_that_cannot_be_written_is_refused_before_any_work() {
         (output.status.code(), stderr(&output).trim_end().to_string())
     };
     let refused = |out: &str, more: &[&str], message: &str| assert_eq!(run(out, more), (Some(2), message.to_string()));
-    refused("taken", &[], "X1");
-    refused("taken/below", &[], "X2");
-    refused("other", &[], "X3");
-    refused("other", &["--replace"], "X4");
-    refused("/proc/out", &[], "X5");
+    refused(
+        "taken",
+        &[],
+        "salband: taken: the output folder: found a file; wanted a folder, or nothing yet. To mend it: choose another --out.",
+    );
+    refused(
+        "taken/below",
+        &[],
+        "salband: taken: the parent of the output folder cannot be written (File exists (os error 17)). To mend it: choose another --out, or change the permissions of its parent.",
+    );
+    refused(
+        "other",
+        &[],
+        "salband: other: the output folder already exists. To mend it: choose another --out, or add --replace to put the new results in its place.",
+    );
+    refused(
+        "other",
+        &["--replace"],
+        "salband: other: the output folder: found a folder without provenance.json, so not one that salband wrote; wanted an earlier output folder to replace. To mend it: choose another --out, or remove the folder yourself.",
+    );
+    refused(
+        "/proc/out",
+        &[],
+        "salband: /proc: the parent of the output folder cannot be written (No such file or directory (os error 2)). To mend it: choose another --out, or change the permissions of its parent.",
+    );
     assert_eq!(std::fs::read_to_string(survey.path("other/precious.txt")).unwrap(), "keep me");
     assert_eq!(run("out", &[]).0, Some(0));
-    refused("out", &[], "X6");
+    refused(
+        "out",
+        &[],
+        "salband: out: the output folder already exists. To mend it: choose another --out, or add --replace to put the new results in its place.",
+    );
     assert_eq!(run("out", &["--replace"]).0, Some(0), "what salband wrote it may replace");
-    refused("out2", &["--threads", "0"], "X7");
+    refused("out2", &["--threads", "0"], "salband: --threads: found 0; wanted 1 or more.");
 }
 
 #[test]

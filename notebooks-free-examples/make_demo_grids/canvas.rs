@@ -71,19 +71,23 @@ impl Canvas {
 
     /// Convolution with a Gaussian of `sigma` metres; the edge is mirrored.
     pub fn smoothed(&self, sigma: f64) -> Self {
-        let reach = (4.0 * sigma / CELL).ceil() as isize;
-        let weights: Vec<f64> = (-reach..=reach).map(|k| (-0.5 * (k as f64 * CELL / sigma).powi(2)).exp()).collect();
+        let reach = (4.0 * sigma / CELL).ceil() as usize;
+        let weight = |k: usize| (-0.5 * ((k as f64 - reach as f64) * CELL / sigma).powi(2)).exp();
+        let weights: Vec<f64> = (0..=2 * reach).map(weight).collect();
         let total: f64 = weights.iter().sum();
         let pass = |from: &Array2<f64>| {
             let (rows, cols) = from.dim();
             // Written transposed, so that two passes smooth both directions and turn the raster back.
-            Array2::from_shape_fn((cols, rows), |(j, i)| {
-                let sum: f64 = (-reach..=reach)
-                    .zip(&weights)
-                    .map(|(k, weight)| weight * from[[i, mirrored(j as isize + k, cols as isize)]])
-                    .sum();
-                sum / total
-            })
+            let mut turned = Array2::zeros((cols, rows));
+            for (i, row) in from.rows().into_iter().enumerate() {
+                let column = |k: usize| mirrored(k as isize - reach as isize, cols as isize);
+                let padded: Vec<f64> = (0..cols + 2 * reach).map(|k| row[column(k)]).collect();
+                for (j, window) in padded.windows(weights.len()).enumerate() {
+                    turned[[j, i]] =
+                        window.iter().zip(&weights).map(|(value, weight)| value * weight).sum::<f64>() / total;
+                }
+            }
+            turned
         };
         Self { values: pass(&pass(&self.values)) }
     }

@@ -85,24 +85,39 @@ pub fn anywhere(dice: &mut Dice) -> Pod {
     Pod::beside(start, azimuth, azimuth - 90.0, length, dice)
 }
 
-/// Share of the survey area that a set of pods covers.
-pub fn cover_share(pods: &[Pod]) -> f64 {
-    let mut canvas = Canvas::filled(9.0);
-    pods.iter().for_each(|pod| pod.draw(&mut canvas));
-    let inside = canvas.inside();
-    inside.iter().filter(|value| **value < 9.0).count() as f64 / inside.len() as f64
+/// The ground that pods cover, counted as they are added.
+#[derive(Debug)]
+pub struct Covered {
+    canvas: Canvas,
+    /// Share of the survey area.
+    pub share: f64,
+}
+
+impl Covered {
+    /// No pod yet.
+    pub fn nothing() -> Self {
+        Self { canvas: Canvas::filled(f64::INFINITY), share: 0.0 }
+    }
+
+    /// Adds a pod.
+    pub fn add(&mut self, pod: &Pod) {
+        pod.draw(&mut self.canvas);
+        let inside = self.canvas.inside();
+        self.share = inside.iter().filter(|value| value.is_finite()).count() as f64 / inside.len() as f64;
+    }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::bodies::{bodies, gravity_margins};
+    use crate::bodies::gravity_margins;
+    use crate::placing::bodies;
     use crate::random::{Purpose, dice};
 
     /// By construction: outside the body means beyond the margin in its outward direction.
     #[test]
     fn pods_lie_outside_their_margin_and_near_it() {
-        for margin in gravity_margins(&bodies()) {
+        for margin in gravity_margins(&bodies(5)) {
             let (sin, cos) = margin.outward.to_radians().sin_cos();
             let pods = along_margin(&margin, &mut dice(3, Purpose::Planted));
             assert!(!pods.is_empty());

@@ -28,6 +28,8 @@ pub enum Purpose {
     Deposits,
     /// Widths of the planted conductors at each depth.
     PodWidths,
+    /// Bodies, and which of their margins have conductors.
+    Bodies,
 }
 
 /// A fresh stream for a purpose.

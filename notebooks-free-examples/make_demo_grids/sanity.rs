@@ -34,7 +34,10 @@ pub fn check(world: &World, margins: &[Margin], crests: &[[f64; 2]]) -> Vec<Line
         places.iter().map(|place| margins.iter().any(|margin| margin.distance(*place) <= NEAR)).collect();
     let near_crest: Vec<bool> = places
         .iter()
-        .map(|place| crests.iter().any(|crest| (crest[0] - place[0]).hypot(crest[1] - place[1]) <= NEAR))
+        .map(|place| {
+            let near = |crest: &[f64; 2]| (crest[0] - place[0]).powi(2) + (crest[1] - place[1]).powi(2) <= NEAR * NEAR;
+            crests.iter().any(near)
+        })
         .collect();
     world
         .slices

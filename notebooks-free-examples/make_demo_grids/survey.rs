@@ -13,8 +13,9 @@ use std::path::Path;
 pub const NOISE: [f64; 2] = [0.03, 2.0];
 /// EPSG code of the resistivity slices: the neighbouring zone, so that they lie turned against the gravity grid.
 const SLICES: u32 = 32634;
-/// Middle and radius of the gap in the gravity grid: from the corner of the area, m.
-const GRAVITY_GAP: ([f64; 2], f64) = ([30_500.0, 31_500.0], 1_100.0);
+/// Middle and radius of the gaps in the gravity grid: from the corner of the area, m.
+const GRAVITY_GAPS: [([f64; 2], f64); 3] =
+    [([30_500.0, 31_500.0], 1_100.0), ([71_000.0, 74_500.0], 1_100.0), ([108_500.0, 22_000.0], 1_300.0)];
 
 /// The file of a slice, and the side of its cells in m.
 pub fn slice_file(depth: f64) -> (String, f64) {
@@ -37,9 +38,11 @@ pub fn write_gravity(out: &Path, bodies: &[Body], seed: u64) -> Result<Vec<[f64;
     let mut values: Vec<f64> = places.iter().map(|place| gravity(bodies, *place)).collect();
     add_noise(&mut values, NOISE[0], seed, Purpose::GravityNoise);
     let crests = crests(&values, shape[1], cell, |row, col| layout.centre(row, col));
-    let ([x, y], radius) = GRAVITY_GAP;
+    let inside = |place: &[f64; 2], ([x, y], radius): ([f64; 2], f64)| {
+        (place[0] - CORNER[0] - x).hypot(place[1] - CORNER[1] - y) < radius
+    };
     for (value, place) in values.iter_mut().zip(&places) {
-        if (place[0] - CORNER[0] - x).hypot(place[1] - CORNER[1] - y) < radius {
+        if GRAVITY_GAPS.into_iter().any(|gap| inside(place, gap)) {
             *value = f64::NAN;
         }
     }
@@ -49,7 +52,7 @@ pub fn write_gravity(out: &Path, bodies: &[Body], seed: u64) -> Result<Vec<[f64;
 
 /// Writes the magnetic grid, in longitude and latitude.
 pub fn write_magnetics(out: &Path, bodies: &[Body], seed: u64) -> Result<()> {
-    let layout = Layout { epsg: 4326, corner: [14.53, 50.995], cell: 0.004, shape: (116, 236) };
+    let layout = Layout::around(&outline(1500.0), 4326, 0.005, 0.4)?;
     let mut values: Vec<f64> = layout.places()?.iter().map(|place| magnetics(bodies, *place)).collect();
     add_noise(&mut values, NOISE[1], seed, Purpose::MagneticNoise);
     float_tiff(
@@ -64,7 +67,7 @@ pub fn write_slices(out: &Path, world: &World) -> Result<()> {
     for slice in &world.slices {
         let (name, cell) = slice_file(slice.depth);
         let path = out.join(&name);
-        let layout = Layout::around(&outline(), SLICES, cell, 0.3)?;
+        let layout = Layout::around(&outline(0.0), SLICES, cell, 0.3)?;
         let values = resistivity(world, slice, &layout)?;
         let layer = Layer { layout: &layout, values: &values, about };
         if name.ends_with(".asc") {
@@ -84,7 +87,7 @@ pub fn write_slices(out: &Path, world: &World) -> Result<()> {
 
 /// Writes the same model as one volume with a depth axis, on coarser cells.
 pub fn write_volume(out: &Path, world: &World) -> Result<()> {
-    let layout = Layout::around(&outline(), SLICES, 1000.0, 0.0)?;
+    let layout = Layout::around(&outline(0.0), SLICES, 1000.0, 0.0)?;
     let depths: Vec<f64> = world.slices.iter().map(|slice| slice.depth).collect();
     let layers = world.slices.iter().map(|slice| resistivity(world, slice, &layout)).collect::<Result<Vec<_>>>()?;
     netcdf(&out.join("resistivity.nc"), &layout, &depths, &layers)
@@ -92,7 +95,7 @@ pub fn write_volume(out: &Path, world: &World) -> Result<()> {
 
 /// Writes the thickness of the cover.
 pub fn write_cover(out: &Path, world: &World) -> Result<()> {
-    let layout = Layout::around(&outline(), GROUND, 500.0, 0.0)?;
+    let layout = Layout::around(&outline(0.0), GROUND, 500.0, 0.0)?;
     let values: Vec<f64> = layout.places()?.iter().map(|place| world.cover.at(*place)).collect();
     float_tiff(
         &out.join("cover_thickness.tif"),
@@ -100,18 +103,30 @@ pub fn write_cover(out: &Path, world: &World) -> Result<()> {
     )
 }
 
-/// Resistivity in ohm m at the cells of a layout; NaN where the model has none.
+/// Resistivity in ohm m at the cells of a layout, to three significant digits, since no model of the ground is known
+/// better than that; NaN where the model has none.
 fn resistivity(world: &World, slice: &Slice, layout: &Layout) -> Result<Vec<f64>> {
     let value = |place: [f64; 2]| {
-        if world.footprint.holds(place) { 10.0_f64.powf(slice.log10.at(place)) } else { f64::NAN }
+        if world.footprint.holds(place) { three_digits(10.0_f64.powf(slice.log10.at(place))) } else { f64::NAN }
     };
     Ok(layout.places()?.into_iter().map(value).collect())
 }
 
-/// Corners of the survey area: easting and northing in EPSG:32633, m.
-fn outline() -> [[f64; 2]; 4] {
-    [(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)].map(|(x, y)| [CORNER[0] + x * SIZE[0], CORNER[1] + y * SIZE[1]])
+/// A positive number rounded to three significant digits.
+fn three_digits(value: f64) -> f64 {
+    let step = 10.0_f64.powi(value.log10().floor() as i32 - 2);
+    (value / step).round() * step
 }
+
+/// Corners of the survey area, moved outwards by `rim` metres: easting and northing in EPSG:32633, m.
+fn outline(rim: f64) -> [[f64; 2]; 4] {
+    let [west, south] = CORNER.map(|side| side - rim);
+    let [east, north] = [0, 1].map(|i| CORNER[i] + SIZE[i] + rim);
+    [[west, south], [east, south], [east, north], [west, north]]
+}
+
+/// How many deposits lie beside planted conductors.
+const AT_PODS: usize = 11;
 
 /// A known deposit.
 #[derive(Debug)]
@@ -128,9 +143,9 @@ pub struct Deposit {
     pub margin: Option<String>,
 }
 
-/// Twelve deposits: nine beside planted conductors, each on another pod, and three anywhere.
+/// The deposits: [`AT_PODS`] beside planted conductors, each on another pod, and the others anywhere.
 pub fn deposits(world: &World, seed: u64) -> Vec<Deposit> {
-    const ROWS: [(&str, &str, &str); 12] = [
+    const ROWS: [(&str, &str, &str); 15] = [
         ("Tanselrig", "copper-gold", "mine"),
         ("Orrabeck", "copper", "prospect"),
         ("Windleshaw Deep", "gold", "mine"),
@@ -140,9 +155,12 @@ pub fn deposits(world: &World, seed: u64) -> Vec<Deposit> {
         ("Brackwithen", "gold", "prospect"),
         ("Sallowgarth", "copper-gold", "occurrence"),
         ("Ternholt", "lead-zinc", "mine"),
+        ("Quarnlow", "copper", "prospect"),
+        ("Hollinsedge Foot", "nickel-copper", "occurrence"),
         ("Kestlemoor", "gold", "occurrence"),
         ("Yarrowdene", "lead-zinc", "prospect"),
         ("Cobblewick Rise", "copper", "occurrence"),
+        ("Thrawnholt", "gold", "prospect"),
     ];
     let mut dice = dice(seed, Purpose::Deposits);
     let pods: Vec<_> =
@@ -150,9 +168,9 @@ pub fn deposits(world: &World, seed: u64) -> Vec<Deposit> {
     ROWS.iter()
         .enumerate()
         .map(|(i, (name, commodity, status))| {
-            let (place, margin) = if i < 9 {
+            let (place, margin) = if i < AT_PODS {
                 // Spread over the pods, and a few hundred metres off the middle of each.
-                let (margin, pod) = pods[i * pods.len() / 9];
+                let (margin, pod) = pods[i * pods.len() / AT_PODS];
                 let disc = pod.discs[(between(&mut dice, 0.1, 0.9) * pod.discs.len() as f64) as usize].0;
                 (disc.map(|side| side + 200.0 * normal(&mut dice)), Some(format!("{} {}", margin.body, margin.faces)))
             } else {

@@ -50,7 +50,7 @@ kind = "magnetic"
 inclination = {inclination:.1}
 declination = {declination:.1}
 
-# Known deposits: they are compared with the targets, never used to find contacts or conductors.
+# Known deposits: they are drawn on the maps and listed; they are never used to find contacts or conductors.
 [deposits]
 path = "deposits.csv"
 crs  = "EPSG:4326"
@@ -62,10 +62,7 @@ within = [500.0, 1000.0, 2000.0, 3000.0]
 # The chance that the whole study reports a likeness where there is none.
 family = 0.05
 
-# To take the effect of the conductive cover out first, remove the marks from the next three lines.
-# [[control]]
-# name = "cover"
-# path = "cover_thickness.tif"
+# cover_thickness.tif is there for a later [[control]]; this version does not take controls out.
 "#
     )
 }
@@ -79,14 +76,15 @@ from one seed:
 
     cargo run --release --example make_demo_grids -- demo-grids
 
-The area is 64 km by 48 km. Dense bodies lie a few hundred metres to 6 km down. Along some of their margins, at 1,500,
-2,500 and 4,000 m, lie conductors; along equally strong ones there are none; and at every depth there are conductors
-that have nothing to do with any body. `truth.md` tells all: read it after you have looked for yourself.
+The area is 128 km by 96 km, with 42 bodies. Most are dense; they lie a few hundred metres to 6 km down. Along some of
+their margins, at 1,500, 2,500 and 4,000 m, lie conductors; along equally strong ones there are none; and at every depth
+there are conductors that have nothing to do with any body. `truth.md` tells all: read it after you have looked for
+yourself.
 
 | file | what it is | CRS and cells |
 | --- | --- | --- |
-| `gravity.tif` | Bouguer gravity, mGal, with a small gap | EPSG:32633, 500 m |
-| `magnetics.tif` | total-field magnetic anomaly, nT | EPSG:4326, 0.004 degrees |
+| `gravity.tif` | Bouguer gravity, mGal, with three small gaps | EPSG:32633, 500 m |
+| `magnetics.tif` | total-field magnetic anomaly, nT | EPSG:4326, 0.005 degrees |
 | `rho_0150.tif`, `rho_1500.tif`, `rho_2500.tif` | resistivity, ohm m; the name holds the depth, m | EPSG:32634, 400 m |
 | `rho_0400.vrt` | the same, a virtual raster over `rho_0400_west.tif` and `rho_0400_east.tif` | EPSG:32634, 400 m |
 | `rho_0800.asc`, `rho_0800.prj` | the same, an ESRI ASCII grid | EPSG:32634, 400 m |
@@ -94,12 +92,13 @@ that have nothing to do with any body. `truth.md` tells all: read it after you h
 | `rho_6000.tif` | the same, 16-bit integers with scale 0.1 and offset 3,000 | EPSG:32634, 800 m |
 | `resistivity.nc` | the same model in one CF NetCDF volume with a depth axis | EPSG:32634, 1,000 m |
 | `cover_thickness.tif` | thickness of the conductive cover, m | EPSG:32633, 500 m |
-| `deposits.csv` | twelve deposits, longitude and latitude | EPSG:4326 |
+| `deposits.csv` | fifteen deposits, longitude and latitude | EPSG:4326 |
 | `study.toml` | the study file | |
 | `truth.md`, `truth.json` | what was put in, in words and for programs | EPSG:32633 |
 
 The slices are in the neighbouring UTM zone on purpose: they lie turned by some four degrees against the gravity grid.
-The resistivity model has a ragged edge and three holes; -9999 stands for no data (-32768 in `rho_6000.tif`).
+The resistivity model has a ragged edge and twelve holes; -9999 stands for no data (-32768 in `rho_6000.tif`).
+Resistivities are rounded to three significant digits: no model of the ground is known better than that.
 
 Licence: MIT OR Apache-2.0, like the program that made it.
 "#;

@@ -2,7 +2,7 @@
 
 use crate::bodies::{Body, CORNER, Margin, SIZE, gravity_margins};
 use crate::canvas::Canvas;
-use crate::pods::{Pod, along_margin, anywhere, cover_share};
+use crate::pods::{Covered, Pod, along_margin, anywhere};
 use crate::random::{Dice, Purpose, between, dice, normal, smooth_field};
 use std::f64::consts::TAU;
 
@@ -16,6 +16,9 @@ pub const BACKGROUND: [f64; 2] = [2.8, 0.20];
 pub const COVER_LEVEL: f64 = 1.3;
 /// At the planted depths decoys cover this share of the area that planted conductors cover; elsewhere as much as those.
 pub const DECOY_SHARE: f64 = 0.2;
+
+/// How many holes the resistivity model has.
+pub const HOLES: usize = 12;
 
 /// One depth of the model.
 #[derive(Debug)]
@@ -50,7 +53,9 @@ pub fn blur(depth: f64) -> f64 {
 pub fn build(seed: u64, bodies: &[Body]) -> World {
     let planted = plant(seed, bodies);
     let pods: Vec<Pod> = planted.iter().flat_map(|(_, pods)| pods.clone()).collect();
-    let share = cover_share(&pods);
+    let mut covered = Covered::nothing();
+    pods.iter().for_each(|pod| covered.add(pod));
+    let share = covered.share;
     let blank = Canvas::filled(0.0);
     let cover_shape = smooth_field(&blank, 3000.0, &mut dice(seed, Purpose::Cover));
     let cover = cover_shape.map(|value| (80.0 + 260.0 * value).max(0.0));
@@ -106,13 +111,17 @@ fn background_shape(like: &Canvas, dice: &mut Dice) -> Canvas {
 /// cover the share that is wanted.
 fn next_decoys(above: &[Pod], wanted: f64, dice: &mut Dice) -> Vec<Pod> {
     let mut pods = Vec::new();
+    let mut covered = Covered::nothing();
     for pod in above {
-        if between(dice, 0.0, 1.0) < 0.5 && cover_share(&pods) < wanted {
+        if between(dice, 0.0, 1.0) < 0.5 && covered.share < wanted {
+            covered.add(pod);
             pods.push(pod.clone());
         }
     }
-    while cover_share(&pods) < wanted {
-        pods.push(anywhere(dice));
+    while covered.share < wanted {
+        let pod = anywhere(dice);
+        covered.add(&pod);
+        pods.push(pod);
     }
     pods
 }
@@ -139,7 +148,7 @@ impl Footprint {
     fn draw(dice: &mut Dice) -> Self {
         let edge = (0..8).map(|_| [between(dice, 200.0, 700.0), between(dice, 4e3, 15e3), between(dice, 0.0, TAU)]);
         let edge = edge.collect();
-        let holes = (0..3)
+        let holes = (0..HOLES)
             .map(|_| {
                 let middle = [0, 1].map(|i| CORNER[i] + SIZE[i] * between(dice, 0.15, 0.85));
                 (middle, between(dice, 1000.0, 2000.0), between(dice, 0.0, TAU))
@@ -190,11 +199,11 @@ pub fn add_noise(values: &mut [f64], deviation: f64, seed: u64, purpose: Purpose
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::bodies::bodies;
+    use crate::placing::bodies;
 
     #[test]
     fn the_same_seed_gives_the_same_ground_and_another_seed_another() {
-        let (one, same, other) = (build(5, &bodies()), build(5, &bodies()), build(6, &bodies()));
+        let (one, same, other) = (build(5, &bodies(5)), build(5, &bodies(5)), build(6, &bodies(5)));
         for (a, b) in one.slices.iter().zip(&same.slices) {
             assert_eq!(a.log10.values, b.log10.values);
         }
@@ -205,8 +214,8 @@ mod tests {
     /// an unplanted depth may change only through the number of decoys, never through their places.
     #[test]
     fn decoys_do_not_know_the_bodies() {
-        let real = build(5, &bodies());
-        let mut moved = bodies();
+        let real = build(5, &bodies(5));
+        let mut moved = bodies(5);
         moved.iter_mut().for_each(|body| body.centre[0] += 500.0);
         let moved = build(5, &moved);
         let first = |world: &World| world.slices[0].decoys[..3].iter().map(|pod| pod.discs.clone()).collect::<Vec<_>>();

@@ -1,5 +1,6 @@
 //! What each command does.
 
+use std::io::Write;
 use std::path::{Path, PathBuf};
 
 use super::arguments::{Arguments, Command, Output};
@@ -13,10 +14,7 @@ pub(super) fn run(arguments: Arguments) -> Result<()> {
         Command::Demo { grids, output } => execute(&demo_study(grids)?, &output),
         Command::New(choice) => new::write(&choice),
         Command::Inspect { file, variable, crs } => inspect::print(&file, variable, crs),
-        Command::Check { study } => {
-            println!("{}", Plan::make(Study::read(&study)?)?.describe());
-            Ok(())
-        }
+        Command::Check { study } => say(&Plan::make(Study::read(&study)?)?.describe()),
         Command::Run { study, output } => execute(&study, &output),
     }
 }
@@ -48,8 +46,19 @@ fn execute(study: &Path, output: &Output) -> Result<()> {
         .map_err(|source| Error::ours("starting the threads").because(source))?;
     let options = RunOptions { out: output.out.clone(), replace: output.replace, threads };
     let answer = run_and_publish(study, &options, &Bars::new())?;
-    println!("{answer}");
-    println!("Page: {}", output.out.join("report.html").display());
-    println!("Tables: {}", output.out.join("tables").display());
-    Ok(())
+    say(&format!(
+        "{answer}\nPage: {}\nTables: {}",
+        output.out.join("report.html").display(),
+        output.out.join("tables").display()
+    ))
+}
+
+/// Prints text on standard output. A reader that has gone away (`| head`) is no error of anyone's.
+pub(super) fn say(text: &str) -> Result<()> {
+    match writeln!(std::io::stdout(), "{text}") {
+        Err(source) if source.kind() != std::io::ErrorKind::BrokenPipe => {
+            Err(Error::ours("writing to standard output").because(source))
+        }
+        _ => Ok(()),
+    }
 }

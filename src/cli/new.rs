@@ -4,6 +4,7 @@ use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
 
 use super::arguments::NewStudy;
+use super::commands::say;
 use crate::error::{Error, Result};
 use crate::grid::Source;
 
@@ -29,8 +30,7 @@ pub(super) fn write(choice: &NewStudy) -> Result<()> {
             .wanted("a writable folder")
             .because(source)
     })?;
-    println!("Wrote {}. Read it through, then: salband check {0}", choice.study.display());
-    Ok(())
+    say(&format!("Wrote {}. Read it through, then: salband check {0}", choice.study.display()))
 }
 
 fn compose(choice: &NewStudy) -> Result<String> {

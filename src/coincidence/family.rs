@@ -2,12 +2,14 @@
 
 use ndarray::{Array2, Zip};
 
-use super::compare::{Comparison, Test, enough_shifts, is_family, smallest_p};
+use super::compare::Comparison;
 use super::correlator::Correlator;
-use super::independent::independent_values_with;
+use super::independent::{independent_values_with, pairs_at_lags};
 use super::measure::Measure;
 use super::null::rank_p;
+use super::resolution::{enough_shifts, smallest_p};
 use super::shift::Reach;
+use super::test::Test;
 use super::verdict::Verdict;
 
 /// Collects the scores of the tests of a family, shift by shift.
@@ -38,16 +40,19 @@ impl Family {
     pub(super) fn judge(self, mut tests: Vec<Test>, level: f64, lags: &Correlator) -> Comparison {
         let field = self.largest.mapv(|value| if value.is_finite() { value } else { f64::NAN });
         let scores: Vec<f64> = field.iter().copied().filter(|value| value.is_finite()).collect();
-        let independent = independent_values_with(lags, &field);
+        let independent = independent_values_with(lags, &field, &pairs_at_lags(lags, &field.mapv(f64::is_finite)));
         let shifts = scores.len().saturating_sub(1);
         let smallest = smallest_p(shifts, independent);
         let enough = enough_shifts(smallest, independent, level);
         for test in &mut tests {
+            if test.is_family() {
+                test.raw_p_family = rank_p(&scores, test.score);
+            }
             let Some(p) = test.p else { continue };
             if matches!(test.measure, Measure::MeanDistance) {
                 test.verdict = Verdict::Described;
-            } else if is_family(test) {
-                let adjusted = rank_p(&scores, test.score).max(smallest).max(p);
+            } else if test.is_family() {
+                let adjusted = test.raw_p_family.max(smallest).max(p);
                 test.p_family = enough.is_ok().then_some(adjusted);
                 test.verdict = match test.p_family {
                     Some(adjusted) if adjusted <= level => Verdict::Found,

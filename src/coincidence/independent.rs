@@ -17,22 +17,27 @@ use super::shift::Reach;
 pub fn independent_values(field: &Array2<f64>) -> f64 {
     let (rows, cols) = field.dim();
     let lags = Reach { rows: rows / 2, cols: cols / 2 };
-    independent_values_with(&Correlator::new((rows, cols), lags), field)
+    let lags = Correlator::new((rows, cols), lags);
+    independent_values_with(&lags, field, &pairs_at_lags(&lags, &field.mapv(f64::is_finite)))
 }
 
-/// As [`independent_values`], with the transforms planned beforehand; the correlator's reach bounds the lags.
-pub(super) fn independent_values_with(lags: &Correlator, field: &Array2<f64>) -> f64 {
+/// How many pairs of the cells given are joined by each lag; the correlator's reach bounds the lags.
+pub(super) fn pairs_at_lags(lags: &Correlator, present: &Array2<bool>) -> Array2<f64> {
+    let present = lags.spectrum(|row, col| f64::from(u8::from(present[[row, col]])));
+    lags.counts(&present, &present)
+}
+
+/// As [`independent_values`], with the transforms planned and the pairs of the finite cells counted beforehand.
+pub(super) fn independent_values_with(lags: &Correlator, field: &Array2<f64>, pairs: &Array2<f64>) -> f64 {
     let count = field.iter().filter(|value| value.is_finite()).count();
     if count == 0 {
         return 0.0;
     }
     let mean = field.iter().filter(|value| value.is_finite()).sum::<f64>() / count as f64;
-    let present = lags.spectrum(|row, col| if field[[row, col]].is_finite() { 1.0 } else { 0.0 });
     let centred = lags.spectrum(|row, col| {
         let value = field[[row, col]];
         if value.is_finite() { value - mean } else { 0.0 }
     });
-    let pairs = lags.counts(&present, &present);
     let products = lags.sums(&centred, &centred);
     let reach = lags.reach();
     let variance = products[reach.zero()] / count as f64;

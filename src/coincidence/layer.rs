@@ -2,6 +2,7 @@
 
 use ndarray::Array2;
 
+use super::null::SMALLEST_P;
 use crate::error::{Error, Result};
 
 /// The pattern that is moved under the null.
@@ -35,7 +36,7 @@ pub struct Settings {
     pub profile: Vec<f64>,
     /// Distances beyond this one count as this one in the mean distance, because lines outside the footprint are unseen.
     pub distance_cap: f64,
-    /// The level at which the family of tests is judged, in (0, 1).
+    /// The level at which the family of tests is judged, from [`SMALLEST_P`] to below 1.
     pub level: f64,
 }
 
@@ -43,7 +44,8 @@ impl Settings {
     /// Checks every number.
     ///
     /// # Errors
-    /// A distance or cap that is not positive and finite, a distance given twice, a level outside (0, 1).
+    /// A distance or cap that is not positive and finite, a distance given twice, a level outside (0, 1) or below the
+    /// smallest p-value that shifts resolve.
     pub fn check(&self) -> Result<()> {
         for distance in self.within.iter().chain(&self.profile).chain([&self.distance_cap]) {
             if !(distance.is_finite() && *distance > 0.0) {
@@ -57,10 +59,10 @@ impl Settings {
                     .wanted("each once"));
             }
         }
-        if !(self.level > 0.0 && self.level < 1.0) {
+        if !(self.level >= SMALLEST_P && self.level < 1.0) {
             return Err(Error::input("the level of the family")
                 .found(self.level)
-                .wanted("a number above 0 and below 1"));
+                .wanted(format!("a number from {SMALLEST_P}, the smallest p-value that shifts resolve, to below 1")));
         }
         Ok(())
     }
@@ -126,7 +128,7 @@ mod tests {
             assert!(Settings { distance_cap: bad, ..settings() }.check().is_err());
         }
         assert!(Settings { within: vec![2.0, 2.0], ..settings() }.check().is_err());
-        for level in [0.0, 1.0, -0.1, f64::NAN] {
+        for level in [0.0, 1.0, -0.1, 0.0049, f64::NAN] {
             assert!(Settings { level, ..settings() }.check().is_err());
         }
     }

@@ -22,21 +22,27 @@
 
 mod compare;
 mod correlator;
+mod engine;
 mod family;
 mod independent;
 mod layer;
 mod measure;
 mod null;
+mod resolution;
 mod shift;
+mod test;
 mod trend;
 mod verdict;
+mod window;
 
-pub use compare::{Comparison, Test, compare};
-pub use correlator::{Correlator, Spectrum};
+pub use compare::{Comparison, compare};
+pub use correlator::{Correlator, Masks, Spectrum};
 pub use independent::independent_values;
 pub use layer::{Reference, Settings, Subject};
 pub use measure::{Measure, Moments, closeness, correlation, enrichment};
 pub use null::{SMALLEST_P, ShiftNull};
+pub use resolution::{LEAST_INDEPENDENT, VALID_LEVEL};
 pub use shift::{LEAST_OVERLAP, LONGEST_SHIFT, Reach, admissible};
+pub use test::Test;
 pub use trend::Trend;
 pub use verdict::{Refusal, Verdict};

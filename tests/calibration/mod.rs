@@ -1,0 +1,11 @@
+//! Does the null keep its level? Independent smooth fields that are not periodic, compared many times over.
+//!
+//! The construction is that of the prototype whose rates the tests name: A = log10 conductivity (Matern 1.5) with its
+//! top 20 % as members, B = gravity (Matern 2.5) with the stronger crests of its horizontal gradient as lines.
+
+pub mod fields;
+mod footprints;
+mod trial;
+
+pub use footprints::{bent, square};
+pub use trial::{Layers, Outcome, trial};
