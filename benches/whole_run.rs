@@ -9,11 +9,11 @@ use std::time::Instant;
 use ndarray::Array2;
 use salband::grid::{Crs, Frame, Grid, write_raster};
 
-#[path = "../tests/calibration/mod.rs"]
+#[path = "../tests/calibration/fields.rs"]
 #[allow(dead_code, reason = "only the random fields are wanted here")]
-mod calibration;
+mod fields;
 
-use calibration::fields::{Smoothness, pair};
+use fields::{Smoothness, pair};
 
 const SIDE: usize = 512;
 const DEPTHS: usize = 10;

@@ -189,7 +189,7 @@ fn cases() -> Vec<Case> {
         case(
             "resistivity called a logarithm",
             |s| s.study("quantity = \"resistivity\"", "quantity = \"log10-resistivity\""),
-            "salband: rho_3000.tif: log10-resistivity: found 6361 cells such as 25.074795265918222; wanted logarithms between -12 and 12. To mend it: check conductivity.quantity: the values may not be logarithms; or mark those cells as no data.",
+            "salband: rho_1000.tif: log10-resistivity: found 6361 cells such as 25.074795265918222; wanted logarithms between -12 and 12. To mend it: check conductivity.quantity: the values may not be logarithms; or mark those cells as no data.",
         ),
         case(
             "no conductor below the threshold",

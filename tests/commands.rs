@@ -153,3 +153,44 @@ fn the_contacts_of_the_small_survey_surround_its_bodies() {
         assert!(nearest < 0.5 * CELL, "the rim at row {row}, column {col}: {nearest} m to the nearest contact");
     }
 }
+
+#[test]
+fn the_study_as_understood_gives_the_same_tables() {
+    let survey = Survey::new();
+    assert!(survey.salband(&["run", "study.toml", "--out", "first"]).status.success());
+    let record: serde_json::Value =
+        serde_json::from_slice(&std::fs::read(survey.path("first/provenance.json")).unwrap()).unwrap();
+    let spelled = record["study"].as_str().unwrap();
+    for key in ["least_area", "profile", "distance_cap", "heights", "strong", "weak", "least_length", "band", "seed"] {
+        assert!(spelled.contains(&format!("{key} = ")), "{key} is spelled out in\n{spelled}");
+    }
+    survey.file("spelled.toml", spelled);
+    let again = survey.salband(&["run", "spelled.toml", "--out", "second"]);
+    assert!(again.status.success(), "{}", stderr(&again));
+    for table in ["coincidence", "distance_profile", "conductors", "contacts", "layers"] {
+        let bytes = |out: &str| std::fs::read(survey.path(&format!("{out}/tables/{table}.csv"))).unwrap();
+        assert_eq!(bytes("first"), bytes("second"), "{table}");
+    }
+}
+
+#[test]
+fn two_populations_are_told_apart_by_a_mixture() {
+    // A third of the ground at about 10 ohm m, the rest at about 1,000: the threshold must fall between.
+    let survey = Survey::new();
+    let two = |row: usize, col: usize| {
+        let base = if (row / 10 + col / 10) % 3 == 0 { 1.0 } else { 3.0 };
+        10f64.powf(base + 0.03 * common::bumps(row, col, 5.0))
+    };
+    survey.raster("rho_1000.tif", &Raster::of(&two));
+    survey.raster("rho_3000.tif", &Raster::of(&two));
+    survey.study("quantile = 0.80", "mixture = true");
+    let ran = survey.salband(&["run", "study.toml", "--out", "out"]);
+    assert!(ran.status.success(), "{}", stderr(&ran));
+    let table = std::fs::read_to_string(survey.path("out/tables/conductors.csv")).unwrap();
+    let header: Vec<&str> = table.lines().next().unwrap().split(',').collect();
+    let cells = header.iter().position(|name| *name == "cells").unwrap();
+    let count: usize =
+        table.lines().skip(1).map(|line| line.split(',').nth(cells).unwrap().parse::<usize>().unwrap()).sum();
+    // 8 x 8 blocks of 100 cells, those whose block numbers add up to a multiple of 3: 21 of 64, at two depths.
+    assert_eq!(count, 2 * 21 * 100);
+}

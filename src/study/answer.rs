@@ -1,13 +1,13 @@
 //! The answer in words, made from the tests.
 
 use super::run::Findings;
-use crate::coincidence::{Measure, Refusal, Test, Verdict};
+use crate::coincidence::{Measure, Refusal, Test, VALID_LEVEL, Verdict};
 use crate::conductor::Side;
 use crate::evidence::{Answer, KeyFigure, depth_label, distance_label, significant};
 
 /// How a p-value is printed: never as exact where it stands at the smallest that is resolved.
 fn p_label(p: f64, smallest: f64) -> String {
-    format!("p {} {}", if p <= smallest { "<" } else { "=" }, significant(p, 2))
+    format!("p\u{a0}{}\u{a0}{}", if p <= smallest { "<" } else { "=" }, significant(p, 2))
 }
 
 impl Findings {
@@ -211,8 +211,8 @@ impl Findings {
             tests().filter(|test| matches!(test.verdict, Verdict::CannotTell(Refusal::TooFewShifts { .. }))).collect();
         if !short.is_empty() {
             limits.push(format!(
-                "{} of {} tests cannot tell, because the footprint is only a few pattern widths across; they are left empty, \
-                 not counted as negative.",
+                "{} of {} tests cannot tell, because the footprint holds next to no independent displacement; they are left \
+                 empty, not counted as negative.",
                 short.len(),
                 tests().count()
             ));
@@ -250,8 +250,18 @@ impl Findings {
         if !bare.is_empty() {
             limits.push(format!("No line was found for {}.", list(&bare)));
         }
+        let scarce = tests().filter(|t| t.p.is_some() && t.independent_shifts < 1.0 / VALID_LEVEL - 1.0).count();
+        if scarce > 0 {
+            limits.push(format!(
+                "{scarce} of {} tests rest on fewer than {:.0} independent shifts: the footprint is only a few pattern \
+                 widths across, and their p-values are not told below {VALID_LEVEL}.",
+                tests().count(),
+                1.0 / VALID_LEVEL - 1.0
+            ));
+        }
         limits.push(format!(
-            "A p-value below {} is not resolved by displacement and is printed as such.",
+            "Displacement resolves no family-wise p below {} on this footprint, and for single tests less; such values \
+             stand as \u{201c}p <\u{201d}.",
             significant(self.comparison.family_smallest_p, 2)
         ));
         limits.push("No control was taken out: cover, topography or station spacing may shape both maps.".into());
@@ -284,7 +294,8 @@ fn percent(share: f64) -> String {
     format!("{:.0} %", 100.0 * share)
 }
 
-fn capital(text: &str) -> String {
+/// The text with a capital letter in front.
+pub(super) fn capital(text: &str) -> String {
     let mut letters = text.chars();
     letters.next().map_or(String::new(), |first| first.to_uppercase().chain(letters).collect())
 }
@@ -295,9 +306,9 @@ mod tests {
 
     #[test]
     fn small_p_values_are_never_printed_as_exact() {
-        assert_eq!(p_label(0.005, 0.005), "p < 0.005");
-        assert_eq!(p_label(0.02, 0.02), "p < 0.02");
-        assert_eq!(p_label(0.031, 0.005), "p = 0.031");
+        assert_eq!(p_label(0.005, 0.005), "p\u{a0}<\u{a0}0.005");
+        assert_eq!(p_label(0.02, 0.02), "p\u{a0}<\u{a0}0.02");
+        assert_eq!(p_label(0.031, 0.005), "p\u{a0}=\u{a0}0.031");
     }
 
     #[test]

@@ -15,11 +15,9 @@ impl Findings {
     pub(super) fn maps(&self) -> Result<Vec<Figure>> {
         let frame = &self.plan.frame;
         let reference = self.references.iter().find(|reference| reference.strength.is_some());
-        let gradient = match reference.and_then(|reference| reference.strength.as_ref()) {
-            // Per kilometre, because a gradient in units per metre is a row of zeros.
-            Some(strength) => Some(strength.map(|value| 1000.0 * value)),
-            None => None,
-        };
+        // Per kilometre, because a gradient in units per metre is a row of zeros.
+        let strength = reference.and_then(|reference| reference.strength.as_ref());
+        let gradient = strength.map(|strength| strength.map(|value| 1000.0 * value));
         let unit = reference
             .and_then(|reference| reference.potential)
             .map_or("", |index| self.plan.study.potentials[index].kind.unit());

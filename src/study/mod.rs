@@ -3,6 +3,7 @@
 mod answer;
 mod deposits;
 mod figures;
+mod frame_choice;
 mod methods;
 mod parse;
 mod plan;
@@ -10,6 +11,7 @@ mod progress;
 mod publish;
 mod run;
 mod schema;
+mod seen;
 mod settings;
 mod spell;
 mod tables;

@@ -296,7 +296,7 @@ impl Place<'_> {
                         .found(format!("no {key}"))
                         .wanted("inclination and declination in degrees, since contacts are picked on pseudo-gravity")
                         .mend(format!("add {key} = ... for the place and date of the survey"))),
-                    Some(angle) if !(angle.get_ref().abs() <= most) => Err(self
+                    Some(angle) if !(-most..=most).contains(angle.get_ref()) => Err(self
                         .at(key, angle.span())
                         .found(angle.get_ref())
                         .wanted(format!("degrees from -{most} to {most}"))),
@@ -389,13 +389,13 @@ impl Place<'_> {
         if within.as_ref().is_some_and(Vec::is_empty) {
             return Err(self.error("test.within").found("an empty list").wanted("at least one distance in metres"));
         }
-        if let Some(null) = &keys.null {
-            if !["default", "shifts"].contains(&null.get_ref().as_str()) {
-                return Err(self
-                    .at("test.null", null.span())
-                    .found(format!("{:?}", null.get_ref()))
-                    .wanted("one of: default, shifts"));
-            }
+        if let Some(null) = &keys.null
+            && !["default", "shifts"].contains(&null.get_ref().as_str())
+        {
+            return Err(self
+                .at("test.null", null.span())
+                .found(format!("{:?}", null.get_ref()))
+                .wanted("one of: default, shifts"));
         }
         let level = match &keys.family {
             None => DEFAULT_LEVEL,

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::time::SystemTime;
 
+use super::answer::{capital, list};
 use super::methods::methods;
 use super::plan::Plan;
 use super::progress::Progress;
@@ -143,20 +144,8 @@ impl Findings {
                 facts.push((label, value));
             }
         }
-        let verdicts = tests.iter().filter(|t| matches!(t.verdict, Verdict::Found | Verdict::OnlyAlone)).map(|test| {
-            let what = match test.measure.within() {
-                Some(within) => {
-                    format!("within {} of {}", distance_label(within), self.reference_label(test.reference))
-                }
-                None => format!(
-                    "{} with the gradient behind {}",
-                    test.measure.words(),
-                    self.reference_label(test.reference)
-                ),
-            };
-            format!("{what}: {}", test.verdict)
-        });
-        let mut verdicts: Vec<String> = verdicts.collect();
+        let mut verdicts: Vec<String> =
+            (0..self.references.len()).flat_map(|reference| self.verdicts(reference, &tests)).collect();
         if verdicts.is_empty() {
             verdicts.push("No test at this depth finds conductors closer than chance.".into());
         }
@@ -168,6 +157,22 @@ impl Findings {
             facts,
             verdicts,
         }
+    }
+
+    /// What was found against one reference at one depth: a sentence for each verdict worth one.
+    fn verdicts(&self, reference: usize, tests: &[&Test]) -> Vec<String> {
+        let label = self.reference_label(reference);
+        let told = |verdict: Verdict| {
+            let found = tests.iter().filter(|test| test.reference == reference && test.verdict == verdict);
+            let what: Vec<String> = found
+                .map(|test| match test.measure.within() {
+                    Some(within) => format!("within {}", distance_label(within)),
+                    None => test.measure.words().to_string(),
+                })
+                .collect();
+            (!what.is_empty()).then(|| format!("{}, {}: {verdict}.", capital(&label), list(&what)))
+        };
+        [told(Verdict::Found), told(Verdict::OnlyAlone)].into_iter().flatten().collect()
     }
 
     /// The map layers: bodies, contacts and deposits as a GeoPackage, grids as GeoTIFF.

@@ -135,7 +135,9 @@ fn place_slices(plan: &Plan, progress: &dyn Progress) -> Result<Vec<SliceFinding
         progress.step();
         Ok(SliceFinding { depth: slice.depth, placed, conductors, resistors })
     };
-    let slices: Vec<SliceFinding> = (0..plan.slices.len()).into_par_iter().map(place).collect::<Result<_>>()?;
+    // All are collected before the first error is taken, so that the same one is told whichever thread is faster.
+    let placed: Vec<Result<SliceFinding>> = (0..plan.slices.len()).into_par_iter().map(place).collect();
+    let slices: Vec<SliceFinding> = placed.into_iter().collect::<Result<_>>()?;
     if slices.iter().all(|slice| slice.conductors.bodies.is_empty()) {
         return Err(Error::input("the conductors")
             .file(&study.path)

@@ -312,7 +312,10 @@ impl Findings {
             columns.push(number(
                 "nearest_line_m",
                 "m",
-                "Distance of its cell to the nearest line of the first reference; empty beyond the largest distance that matters",
+                &format!(
+                    "Distance of its cell to the nearest line of {}; empty beyond the largest distance that matters",
+                    self.reference_label(0)
+                ),
                 rows,
                 |deposit| {
                     let far = reference.distance.iter().copied().fold(0.0, f64::max);
