@@ -178,7 +178,7 @@ fn two_populations_are_told_apart_by_a_mixture() {
     // A third of the ground at about 10 ohm m, the rest at about 1,000: the threshold must fall between.
     let survey = Survey::new();
     let two = |row: usize, col: usize| {
-        let base = if (row / 10 + col / 10) % 3 == 0 { 1.0 } else { 3.0 };
+        let base = if (row / 10 + col / 10).is_multiple_of(3) { 1.0 } else { 3.0 };
         10f64.powf(base + 0.03 * common::bumps(row, col, 5.0))
     };
     survey.raster("rho_1000.tif", &Raster::of(&two));

@@ -72,7 +72,7 @@ impl Findings {
         let best = enriched.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score));
         let (headline, figures) = match (best, found.is_empty(), judged.is_empty()) {
             (Some(best), ..) => (self.found_headline(best, &enriched), self.key_figures(best)),
-            (None, false, _) => (self.correlation_headline(&found), Vec::new()),
+            (None, false, _) => (self.correlation_headline(&found, &judged), self.family_figures()),
             (None, true, false) => (self.nothing_headline(&judged), self.family_figures()),
             (None, true, true) => (
                 "The data cannot tell: no test of conductors against contacts has enough room to reach the level."
@@ -101,18 +101,23 @@ impl Findings {
         )
     }
 
-    fn correlation_headline(&self, found: &[&Test]) -> String {
+    fn correlation_headline(&self, found: &[&Test], judged: &[&Test]) -> String {
         let best = found.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score));
         match best {
             None => String::new(),
             Some(best) => format!(
                 "In part, at {}: log10 conductivity rises with the gradient strength of {} (coefficient {}, {} with all {} \
-                 tests counted), but the conductors as bodies do not lie closer to its contacts than chance.",
+                 tests counted), but {}.",
                 list(&self.depths(found.iter().copied())),
                 self.references[best.reference].name,
                 significant(best.observed, 2),
                 self.p_label(best, best.p_family.unwrap_or(1.0)),
-                self.comparison.family_tests
+                self.comparison.family_tests,
+                if judged.iter().any(|test| test.measure.within().is_some()) {
+                    "the conductors as bodies do not lie closer to its contacts than chance"
+                } else {
+                    "whether the conductors as bodies lie closer to contacts than chance, the data cannot tell"
+                }
             ),
         }
     }

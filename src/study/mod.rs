@@ -1,9 +1,11 @@
 //! The study: its file, its plan, its run, and what is written of it.
 
 mod answer;
+mod compose;
 mod deposits;
 mod figures;
 mod frame_choice;
+mod inspect;
 mod methods;
 mod parse;
 mod plan;
@@ -16,7 +18,9 @@ mod settings;
 mod spell;
 mod tables;
 
+pub use compose::{NamedFiles, compose};
 pub use deposits::Deposit;
+pub use inspect::inspect;
 pub use parse::{DEFAULT_LEVEL, DEFAULT_SEED};
 pub use plan::{Plan, PlannedLayer, PlannedPotential, PlannedSlice};
 pub use progress::{Progress, Silent};

@@ -136,7 +136,12 @@ fn place_slices(plan: &Plan, progress: &dyn Progress) -> Result<Vec<SliceFinding
         Ok(SliceFinding { depth: slice.depth, placed, conductors, resistors })
     };
     // All are collected before the first error is taken, so that the same one is told whichever thread is faster.
-    let placed: Vec<Result<SliceFinding>> = (0..plan.slices.len()).into_par_iter().map(place).collect();
+    let placed: Vec<Result<SliceFinding>> = if plan.slices.iter().any(|slice| slice.layer.format == "netCDF") {
+        // The HDF5 library below NetCDF is silenced on the thread that loads it only, and prints on every other.
+        (0..plan.slices.len()).map(place).collect()
+    } else {
+        (0..plan.slices.len()).into_par_iter().map(place).collect()
+    };
     let slices: Vec<SliceFinding> = placed.into_iter().collect::<Result<_>>()?;
     if slices.iter().all(|slice| slice.conductors.bodies.is_empty()) {
         return Err(Error::input("the conductors")
