@@ -50,6 +50,8 @@ fn new_writes_a_study_that_checks_and_runs() {
     assert!(plan.status.success(), "{}", stderr(&plan));
     let plan = stdout(&plan);
     assert!(plan.contains("Frame: EPSG:32633, 80 rows x 80 columns of 500 m"), "{plan}");
+    assert!(plan.contains("gravity                  6400 cells (100 %)"), "{plan}");
+    assert!(plan.contains("displaced by up to 20 rows and 20 columns, 0.25 of the footprint's sides"), "{plan}");
     assert!(plan.contains("a family of up to 8 tests"), "two depths x (3 distances + correlation): {plan}");
     let ran = survey.salband(&["run", "fresh.toml", "--out", "out"]);
     assert!(ran.status.success(), "{}", stderr(&ran));
@@ -193,4 +195,22 @@ fn two_populations_are_told_apart_by_a_mixture() {
         table.lines().skip(1).map(|line| line.split(',').nth(cells).unwrap().parse::<usize>().unwrap()).sum();
     // 8 x 8 blocks of 100 cells, those whose block numbers add up to a multiple of 3: 21 of 64, at two depths.
     assert_eq!(count, 2 * 21 * 100);
+}
+
+#[test]
+fn a_footprint_too_small_to_shift_is_told_in_words() {
+    // Cells of 5 km leave 8 x 8 of them: shifts of up to two cells, 13 in the disc, fewer than 1/.05 ranks need.
+    let survey = Survey::new();
+    let study = common::STUDY.replace("cell = 500.0", "cell = 5000.0");
+    survey.file("study.toml", &study.replace("quantile = 0.80", "quantile = 0.80, least_area = 1.0"));
+    let ran = survey.salband(&["run", "study.toml", "--out", "out"]);
+    assert!(ran.status.success(), "{}", stderr(&ran));
+    assert!(stdout(&ran).starts_with("The data cannot tell"), "{}", stdout(&ran));
+    let table = std::fs::read_to_string(survey.path("out/tables/coincidence.csv")).unwrap();
+    let header: Vec<&str> = table.lines().next().unwrap().split(',').collect();
+    let p = header.iter().position(|name| *name == "p_family").unwrap();
+    for row in table.lines().skip(1) {
+        assert_eq!(row.split(',').nth(p), Some(""), "{row}");
+    }
+    assert!(table.contains("cannot tell: this footprint holds"), "{table}");
 }

@@ -126,6 +126,26 @@ fn gaps_stay_gaps_and_half_covered_cells_are_kept() {
 }
 
 #[test]
+fn a_mask_band_hides_cells_that_hold_numbers() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("masked.tif");
+    let own = frame(500.0, 20, 24);
+    let driver = DriverManager::get_driver_by_name("GTiff").unwrap();
+    let mut dataset = driver.create_with_band_type::<f32, _>(&path, 24, 20, 1).unwrap();
+    dataset.set_geo_transform(&[own.west, 500.0, 0.0, own.north, 0.0, -500.0]).unwrap();
+    dataset.set_spatial_ref(&SpatialRef::from_epsg(32633).unwrap()).unwrap();
+    let mut band = dataset.rasterband(1).unwrap();
+    band.write((0, 0), (24, 20), &mut Buffer::new((24, 20), vec![7.5f32; 480])).unwrap();
+    band.create_mask_band(true).unwrap();
+    let shown = (0..480).map(|at| if at == 5 * 24 + 9 { 0u8 } else { 255 }).collect();
+    band.open_mask_band().unwrap().write((0, 0), (24, 20), &mut Buffer::new((24, 20), shown)).unwrap();
+    dataset.close().unwrap();
+    let values = place(&Source::file(&path).open().unwrap(), 1, &own);
+    assert!(values[[5, 9]].is_nan());
+    assert_eq!(values.iter().filter(|value| (**value - 7.5).abs() < 1e-6).count(), 479);
+}
+
+#[test]
 fn where_the_raster_ends_inside_a_cell_its_cover_counts() {
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("ends.tif");

@@ -14,7 +14,10 @@ pub(super) fn run(arguments: Arguments) -> Result<()> {
         Command::Demo { grids, output } => execute(&demo_study(grids)?, &output),
         Command::New(choice) => new::write(&choice),
         Command::Inspect { file, variable, crs } => inspect::print(&file, variable, crs),
-        Command::Check { study } => say(&Plan::make(Study::read(&study)?)?.describe()),
+        Command::Check { study } => {
+            let plan = Plan::make(Study::read(&study)?)?;
+            say(&format!("{}\n{}", plan.describe(), plan.describe_footprints()?))
+        }
         Command::Run { study, output } => execute(&study, &output),
     }
 }

@@ -89,6 +89,9 @@ pub(super) fn rank_p(scores: &[f64], score: f64) -> f64 {
 }
 
 /// Quantile by linear interpolation between order statistics (type 7 of Hyndman & Fan 1996); reorders the numbers.
+///
+/// The same as the crate's own quantile, but in place and without a check for NaN: it is taken twice for every test, over
+/// every shift.
 fn quantile(values: &mut [f64], share: f64) -> f64 {
     let at = share * (values.len() - 1) as f64;
     let (_, below, rest) = values.select_nth_unstable_by(at.floor() as usize, f64::total_cmp);

@@ -4,6 +4,7 @@ mod answer;
 mod compose;
 mod deposits;
 mod figures;
+mod footprints;
 mod frame_choice;
 mod inspect;
 mod methods;

@@ -136,6 +136,16 @@ impl Plan {
         self.slices.len() * (self.references() * sides * self.within.len() + fields)
     }
 
+    /// How many sums over every shift the comparison takes: for each slice, side and reference one for each distance, the
+    /// subject's own cells and the mean distance; for each slice and field three for the correlation; and what they share.
+    pub fn sums(&self) -> usize {
+        let sides = 1 + usize::from(self.study.conductivity.resistors.is_some());
+        let ladder = self.within.len() + self.profile.iter().filter(|far| !self.within.contains(far)).count();
+        let fields = self.references() - self.study.lines.len();
+        let shared = self.references() * (ladder + 2) + 2 * fields;
+        self.slices.len() * (self.references() * sides * (ladder + 2) + 3 * fields) + shared
+    }
+
     /// Memory that the run will take at most, in bytes: an estimate from the sizes of layers and spectra.
     pub fn memory(&self) -> usize {
         let cells = self.frame.rows * self.frame.cols;
@@ -212,7 +222,12 @@ impl Plan {
             text,
             "  null: every shift without wrapping, up to a quarter of the footprint, keeping half of the overlap."
         );
-        let _ = writeln!(text, "\nCost: about {} MB of memory at most.", self.memory() >> 20);
+        let _ = writeln!(
+            text,
+            "\nCost: {} sums over every shift, and about {} MB of memory at most.",
+            self.sums(),
+            self.memory() >> 20
+        );
         text
     }
 
