@@ -14,7 +14,7 @@ use rayon::prelude::*;
 mod calibration;
 
 use calibration::fields::{Smoothness, highest, pair};
-use calibration::{Layers, Outcome, bent, square, trial};
+use calibration::{Layers, Outcome, bent, square, trial_over};
 
 const SIDE: usize = 128;
 const LENGTHS: [f64; 4] = [3.0, 6.0, 12.0, 20.0];
@@ -27,8 +27,14 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
     let file = PathBuf::from(words.first().map_or("target/calibration.md", String::as_str));
     let replicates: u64 = words.get(1).map_or(Ok(400), |word| word.parse())?;
     let began = Instant::now();
-    let squares = [("full square", square(SIDE)), ("bent L", bent(SIDE)), ("ragged, with holes", ragged(SIDE))];
-    let strip = [("64 x 256 strip", elongated(SIDE))];
+    let alone = |name, footprint: Array2<bool>| (name, footprint.clone(), footprint);
+    let squares = [
+        alone("full square", square(SIDE)),
+        alone("bent L", bent(SIDE)),
+        alone("ragged, with holes", ragged(SIDE)),
+        ("ragged, over a full grid", ragged(SIDE), square(SIDE)),
+    ];
+    let strip = [alone("64 x 256 strip", elongated(SIDE))];
     let mut table = heading();
     let mut all: Vec<Outcome> = Vec::new();
     for footprints in [squares.as_slice(), strip.as_slice()] {
@@ -38,10 +44,10 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
                 .into_par_iter()
                 .map(|seed| {
                     let layers = Layers::independent(seed, shape, length);
-                    footprints.iter().map(|(_, footprint)| trial(&layers, footprint)).collect()
+                    footprints.iter().map(|(_, footprint, wide)| trial_over(&layers, footprint, wide)).collect()
                 })
                 .collect::<Result<_, _>>()?;
-            for (number, (name, _)) in footprints.iter().enumerate() {
+            for (number, (name, ..)) in footprints.iter().enumerate() {
                 let cell: Vec<&Outcome> = outcomes.iter().map(|trial| &trial[number]).collect();
                 writeln!(table, "{}", line(name, length, &cell))?;
             }

@@ -60,6 +60,10 @@ fn found_where_it_was_built_and_not_where_it_was_not() {
             assert!(p[row].is_nan() || p[row] > 0.05, "row {row}: resistors were not built anywhere: p {}", p[row]);
         }
     }
+    let record = std::fs::read_to_string(out.join("provenance.json")).unwrap();
+    for file in ["rho_0400.vrt", "rho_0400_west.tif", "rho_0400_east.tif", "rho_0800.prj"] {
+        assert!(record.contains(&format!("\"path\": \"{file}\"")), "{file} is an input, with its hash");
+    }
     assert_eq!(seen, 6, "three depths at two distances");
     assert_eq!(table(&out.join("tables/deposits.csv")).height(), 15, "every deposit is kept");
 }

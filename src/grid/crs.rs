@@ -37,8 +37,17 @@ impl Crs {
                 .mend("state crs for this layer in the study"));
         }
         let wkt = reference.to_wkt().map_err(|source| Error::input("the coordinate system").because(Reason(source)))?;
-        let name = reference.authority().unwrap_or(title);
+        // Files often carry a well-known system without its code.
+        let mut known = reference.clone();
+        let mut code = || known.auto_identify_epsg().and_then(|()| known.authority());
+        let name = reference.authority().or_else(|_| code()).unwrap_or(title);
         Ok(Self { name, wkt, geographic, metres_per_unit: if geographic { 1.0 } else { reference.linear_units() } })
+    }
+
+    /// The definition to write into a study: the code where there is one, the WKT otherwise.
+    pub fn definition(&self) -> &str {
+        let coded = self.name.split_once(':').is_some_and(|(_, code)| code.chars().all(|c| c.is_ascii_digit()));
+        if coded { &self.name } else { &self.wkt }
     }
 
     /// The system for GDAL, with coordinates in the order (x or longitude, y or latitude).

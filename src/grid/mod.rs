@@ -3,6 +3,7 @@
 mod crs;
 mod describe;
 mod distance;
+mod files;
 mod frame;
 mod lines;
 mod mask;
@@ -18,6 +19,7 @@ mod write;
 pub use crs::carry;
 pub use describe::describe_layers;
 pub use distance::distance_to_lines;
+pub use files::files_of_vector;
 pub use frame::{Crs, Frame};
 pub use lines::read_lines;
 pub use mask::Mask;

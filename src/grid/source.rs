@@ -5,6 +5,7 @@ use std::path::{Path, PathBuf};
 use gdal::{Dataset, Metadata};
 use ndarray::Array2;
 
+use super::files::files_of;
 use super::reason::Reason;
 use super::{Crs, Frame};
 use crate::error::{Error, Result};
@@ -241,6 +242,12 @@ impl Raster {
     /// Path of the file.
     pub fn path(&self) -> &Path {
         &self.path
+    }
+
+    /// Every file that the raster is read from: the file itself first, then what it points to or is accompanied by.
+    pub fn files(&self) -> Vec<PathBuf> {
+        let others = files_of(&self.dataset).into_iter().filter(|file| *file != self.path && file.is_file());
+        std::iter::once(self.path.clone()).chain(others).collect()
     }
 
     /// The box that the raster covers, in its own system.

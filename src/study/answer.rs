@@ -126,13 +126,16 @@ impl Findings {
         let family = |test: &Test| test.p_family.unwrap_or(1.0);
         let closest = judged.iter().min_by(|a, b| family(a).total_cmp(&family(b)));
         let least = closest.map_or_else(|| "p = 1".into(), |test| self.p_label(test, family(test)));
-        format!(
-            "No: at none of the {} depths do conductors keep to the margins more closely than chance ({} for the closest of \
-             {} tests).",
-            self.slices.len(),
-            least,
-            self.comparison.family_tests
-        )
+        let said = match self.slices.as_slice() {
+            [only] => {
+                format!("No: at {} conductors keep to the margins no more closely than chance", depth_label(only.depth))
+            }
+            many => format!(
+                "No: at none of the {} depths do conductors keep to the margins more closely than chance",
+                many.len()
+            ),
+        };
+        format!("{said} ({least} for the closest of {} tests).", self.comparison.family_tests)
     }
 
     fn key_figures(&self, best: &Test) -> Vec<KeyFigure> {

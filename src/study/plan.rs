@@ -7,7 +7,7 @@ use super::frame_choice::{choose_cell, choose_crs, choose_extent, profile_ladder
 use super::seen::{Seen, see_slices};
 use super::settings::Study;
 use crate::error::{Error, Result};
-use crate::grid::{Frame, Resampler, Source};
+use crate::grid::{Frame, Resampler, Source, files_of_vector};
 
 /// The most cells that a potential field may use beyond the frame, so that its edges fall outside.
 const MOST_RING: usize = 64;
@@ -56,6 +56,8 @@ pub struct PlannedLayer {
     pub raster_cell: f64,
     /// How it will be resampled.
     pub resampler: Resampler,
+    /// Every file that it is read from.
+    pub files: Vec<PathBuf>,
 }
 
 /// A depth slice.
@@ -231,16 +233,16 @@ impl Plan {
         text
     }
 
-    /// Every raster and vector file that the run reads, each once.
+    /// Every file that the run reads, each once: rasters and what they point to, vectors, tables.
     pub fn files(&self) -> Vec<PathBuf> {
         let mut files: Vec<PathBuf> = Vec::new();
-        let slices = self.slices.iter().map(|slice| &slice.layer.source.path);
-        let potentials = self.potentials.iter().map(|field| &field.layer.source.path);
-        let lines = self.study.lines.iter().map(|lines| &lines.path);
-        let deposits = self.study.deposits.iter().map(|deposits| &deposits.path);
+        let slices = self.slices.iter().flat_map(|slice| slice.layer.files.clone());
+        let potentials = self.potentials.iter().flat_map(|field| field.layer.files.clone());
+        let lines = self.study.lines.iter().flat_map(|lines| files_of_vector(&lines.path));
+        let deposits = self.study.deposits.iter().map(|deposits| deposits.path.clone());
         for path in slices.chain(potentials).chain(lines).chain(deposits) {
-            if !files.contains(path) {
-                files.push(path.clone());
+            if !files.contains(&path) {
+                files.push(path);
             }
         }
         files

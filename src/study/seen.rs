@@ -37,6 +37,7 @@ impl Seen {
             crs_stated: self.raster.crs_stated,
             raster_cell,
             resampler: Resampler::fit_for(raster_cell, frame.cell),
+            files: self.raster.files(),
         })
     }
 }

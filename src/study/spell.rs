@@ -17,7 +17,7 @@ impl Plan {
         file.insert("seed".into(), seed);
         file.insert(
             "frame".into(),
-            table([("crs", self.frame.crs.name.clone().into()), ("cell", self.frame.cell.into())]),
+            table([("crs", self.frame.crs.definition().into()), ("cell", self.frame.cell.into())]),
         );
         let slices = self.slices.iter().map(|slice| {
             let mut keys = self.layer(&slice.layer);

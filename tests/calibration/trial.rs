@@ -64,15 +64,17 @@ pub struct Outcome {
     pub independent: [f64; 2],
 }
 
-/// Compares the layers inside a footprint.
+/// Compares the layers inside one footprint.
 pub fn trial(layers: &Layers, footprint: &Array2<bool>) -> Result<Outcome> {
-    let far = distance(&crests(&layers.strength, footprint));
+    trial_over(layers, footprint, footprint)
+}
+
+/// Compares slices on one footprint with gravity on another, as where a ragged model lies over a wide grid.
+pub fn trial_over(layers: &Layers, footprint: &Array2<bool>, wide: &Array2<bool>) -> Result<Outcome> {
+    let far = distance(&crests(&layers.strength, wide));
     let subjects: Vec<Subject> = layers.slices.iter().map(|slice| subject(slice, footprint)).collect();
-    let reference = Reference {
-        footprint: footprint.clone(),
-        distance: Some(far.clone()),
-        strength: Some(layers.strength.clone()),
-    };
+    let reference =
+        Reference { footprint: wide.clone(), distance: Some(far.clone()), strength: Some(layers.strength.clone()) };
     let settings = Settings { within: WITHIN.to_vec(), profile: vec![], distance_cap: CAP, level: 0.05 };
     let comparison = compare(&subjects, &[reference], &settings)?;
     let first = |measure| comparison.tests.iter().find(|test| test.subject == 0 && test.measure == measure).unwrap();
