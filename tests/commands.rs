@@ -68,9 +68,10 @@ fn magnetics_ask_for_their_angles_before_the_study_runs() {
     assert!(made.status.success(), "{}", stderr(&made));
     let checked = survey.salband(&["check", "m.toml"]);
     assert_eq!(checked.status.code(), Some(2), "the angles are left for the user to fill in");
+    assert!(stderr(&checked).contains("found no inclination"), "{}", stderr(&checked));
     let text =
-        std::fs::read_to_string(survey.path("m.toml")).unwrap().replace("inclination = ???", "inclination = 62.0");
-    survey.file("m.toml", &text.replace("declination = ???", "declination = 3.0"));
+        std::fs::read_to_string(survey.path("m.toml")).unwrap().replace("# inclination = 0.0", "inclination = 62.0");
+    survey.file("m.toml", &text.replace("# declination = 0.0", "declination = 3.0"));
     assert!(survey.salband(&["check", "m.toml"]).status.success());
 }
 

@@ -4,9 +4,14 @@ use crate::bodies::FIELD_ANGLES;
 use crate::survey::slice_file;
 use crate::world::DEPTHS;
 
+/// How far grid north lies east of true north at the middle of the area, degrees: 0.456 sin(50.98), the distance from the
+/// central meridian times the sine of the latitude (Snyder 1987).
+const CONVERGENCE: f64 = 0.35;
+
 /// The study file, with a comment on each choice.
 pub fn study(seed: u64) -> String {
     let [inclination, declination] = FIELD_ANGLES;
+    let from_true_north = declination + CONVERGENCE;
     let slices: String = DEPTHS
         .iter()
         .map(|depth| format!("  {{ path = \"{}\", depth = {depth:.1} }},\n", slice_file(*depth).0))
@@ -46,9 +51,10 @@ heights = [0.0, 1000.0]
 name = "magnetics"
 path = "magnetics.tif"
 kind = "magnetic"
-# Direction of the inducing field, degrees: inclination positive down, declination positive east.
+# Direction of the inducing field, degrees: inclination positive down, declination positive east of true north (grid north
+# lies {CONVERGENCE} degrees east of it here). Invented like the rest: at this latitude a real one would point down.
 inclination = {inclination:.1}
-declination = {declination:.1}
+declination = {from_true_north:.2}
 
 # Known deposits: they are drawn on the maps and listed; they are never used to find contacts or conductors.
 [deposits]
@@ -96,7 +102,7 @@ yourself.
 | `study.toml` | the study file | |
 | `truth.md`, `truth.json` | what was put in, in words and for programs | EPSG:32633 |
 
-The slices are in the neighbouring UTM zone on purpose: they lie turned by some four degrees against the gravity grid.
+The slices are in the neighbouring UTM zone on purpose: they lie turned by nearly five degrees against the gravity grid.
 The resistivity model has a ragged edge and twelve holes; -9999 stands for no data (-32768 in `rho_6000.tif`).
 Resistivities are rounded to three significant digits: no model of the ground is known better than that.
 

@@ -73,9 +73,9 @@ pub enum Verdict {
 impl fmt::Display for Verdict {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            Self::Found => f.write_str("closer than chance, the family counted"),
-            Self::OnlyAlone => f.write_str("closer than chance on its own, not once the family is counted"),
-            Self::NotFound => f.write_str("no closer than chance"),
+            Self::Found => f.write_str("beyond chance, the family counted"),
+            Self::OnlyAlone => f.write_str("beyond chance on its own, not once the family is counted"),
+            Self::NotFound => f.write_str("not beyond chance"),
             Self::Described => f.write_str("described only: the level of this measure is approximate"),
             Self::CannotTell(refusal) => refusal.fmt(f),
         }

@@ -128,7 +128,7 @@ pub(super) fn key(canvas: &mut Canvas, y: f64, alpha: f64, across: bool) {
     canvas.marker((13.0, y - 4.5), 5.0, true);
     canvas.key((36.0, y), &format!("observed, family p \u{2264} {alpha}"));
     canvas.marker((283.0, y - 4.5), 5.0, false);
-    canvas.key((300.0, y), "observed, not established");
+    canvas.key((300.0, y), "observed, not beyond chance");
 }
 
 #[cfg(test)]

@@ -79,13 +79,13 @@ pub(super) fn key(canvas: &mut Canvas, map: &MapFigure, range: Option<(f64, f64)
     let id = format!("{}-colours", canvas.id);
     let gradient = svg::node::element::LinearGradient::new().set("id", id.clone());
     canvas.add(stops.fold(gradient, |gradient, stop| gradient.add(stop)));
-    let low = significant(low, 2);
+    let low = format!("\u{2264} {}", significant(low, 2));
     let start = low.chars().count() as f64 * 9.5 + 10.0;
     canvas.key((0.0, y + 11.0), &low);
     let class = if background.colours == super::Colours::Quiet { "sb-quiet" } else { "sb-raster" };
     let bar = svg::node::element::Rectangle::new().set("class", class).set("fill", format!("url(#{id})"));
     canvas.add(bar.set("x", start).set("y", y).set("width", 90).set("height", 13));
     canvas.rectangle("sb-frame", (start, y), (90.0, 13.0));
-    let words = format!("{}   {}", significant(high, 2), background.label);
+    let words = format!("\u{2265} {}   {}", significant(high, 2), background.label);
     canvas.key((start + 97.0, y + 11.0), &words);
 }

@@ -50,7 +50,7 @@ pub use folder::OutputFolder;
 pub use gis::{Shape, VectorLayer, write_geopackage};
 pub use map::{Background, ContactLine, Deposit, MapFigure, Side};
 pub use moment::rfc3339;
-pub use number::{depth_label, distance_label, significant};
+pub use number::{depth_label, distance_label, grouped, significant};
 pub use page::{Answer, DepthPanel, KeyFigure, Method, Page, PageTable, write_page};
 pub use picture::{data_uri, png};
 pub use provenance::{Input, Provenance, hash_file, write_provenance};

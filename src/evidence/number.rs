@@ -28,7 +28,7 @@ fn trimmed(text: &str) -> &str {
 }
 
 /// A whole number with a comma between thousands, such as `12,500`.
-pub(super) fn grouped(value: f64) -> String {
+pub fn grouped(value: f64) -> String {
     let whole = format!("{:.0}", value.abs());
     let mut text = String::new();
     for (position, digit) in whole.chars().enumerate() {

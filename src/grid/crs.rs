@@ -2,8 +2,8 @@
 
 use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, SpatialRef};
 
-use super::Crs;
 use super::reason::Reason;
+use super::{Crs, Frame};
 use crate::error::{Error, Result};
 
 impl Crs {
@@ -80,6 +80,25 @@ impl Crs {
     }
 }
 
+/// Azimuth of true north at the middle of a frame, degrees clockwise from grid north.
+///
+/// # Errors
+/// When the frame has no place on the earth.
+pub fn true_north(frame: &Frame) -> Result<f64> {
+    let geographic = Crs::from_definition("EPSG:4326")?;
+    let middle = ((frame.west + frame.east()) / 2.0, (frame.south() + frame.north) / 2.0);
+    let (longitude, latitude) = carry(&[middle], &frame.crs, &geographic)?[0];
+    // A step of some hundred metres along the meridian, toward the equator's side so that no pole is crossed.
+    let step = if latitude > 0.0 { -0.001 } else { 0.001 };
+    let ends = carry(&[(longitude, latitude), (longitude, latitude + step)], &geographic, &frame.crs)?;
+    let (east, north) = ((ends[1].0 - ends[0].0) / step, (ends[1].1 - ends[0].1) / step);
+    let azimuth = east.atan2(north).to_degrees();
+    if azimuth.is_finite() {
+        return Ok(azimuth);
+    }
+    Err(Error::input("the frame's middle").found("no place on the earth").wanted("a frame inside its system's area"))
+}
+
 /// Carries points from one system into another; a point that cannot be carried comes back as NaN.
 ///
 /// # Errors
@@ -117,6 +136,21 @@ mod tests {
         assert_eq!(Crs::utm_at(15.0, 50.0).unwrap().name, "EPSG:32633");
         assert_eq!(Crs::utm_at(151.0, -33.0).unwrap().name, "EPSG:32756");
         assert_eq!(Crs::utm_at(180.0, 1.0).unwrap().name, "EPSG:32601");
+    }
+
+    #[test]
+    fn true_north_turns_by_the_convergence() {
+        // To first order the grid of a transverse Mercator system is turned by (longitude - central meridian) sin(latitude)
+        // clockwise from true north (Snyder 1987, USGS Professional Paper 1395), so true north lies as much to the left.
+        let utm = Crs::from_definition("EPSG:32633").unwrap();
+        let geographic = Crs::from_definition("EPSG:4326").unwrap();
+        for (longitude, latitude) in [(17.0f64, 50.0f64), (12.5, 50.0), (15.0, 10.0), (17.0, -35.0)] {
+            let (x, y) = carry(&[(longitude, latitude)], &geographic, &utm).unwrap()[0];
+            let frame = Frame::new(utm.clone(), x - 500.0, y + 500.0, 100.0, 10, 10).unwrap();
+            let expected = -(longitude - 15.0) * latitude.to_radians().sin();
+            let found = true_north(&frame).unwrap();
+            assert!((found - expected).abs() < 0.01, "{longitude}, {latitude}: {found} against {expected}");
+        }
     }
 
     #[test]

@@ -61,7 +61,7 @@ impl Raster {
     /// 1. The window of the raster that the frame needs is read; no-data, masks, scale and offset are honoured.
     /// 2. `change` turns it into what is to be resampled, log10 resistivity for example.
     /// 3. GDAL's warper resamples it: area-weighted average when the frame's cells are more than 1.5 times as large,
-    ///    cubic convolution otherwise. When averaging, a cell with less than half its area covered is missing.
+    ///    cubic convolution otherwise, kept within the range of what was read. When averaging, a cell with less than half its area covered is missing.
     ///
     /// # Errors
     /// No overlap with the frame, nothing but no-data in it, data that cannot be read or changed.
@@ -93,7 +93,12 @@ impl Raster {
         let pad = 1 + (frame.cell / raster_cell).ceil() as usize;
         let placed = self.warp_array(&changed, f64::NAN, window, pad, frame, resampler).map_err(here)?;
         let values = match resampler {
-            Resampler::Cubic => placed,
+            Resampler::Cubic => {
+                // Cubic convolution overshoots beside steep changes; no value may come out that no cell of the file holds.
+                let finite = || changed.iter().copied().filter(|value| value.is_finite());
+                let (low, high) = (finite().fold(f64::INFINITY, f64::min), finite().fold(f64::NEG_INFINITY, f64::max));
+                placed.mapv(|value| value.clamp(low, high))
+            }
             Resampler::Average => {
                 let covered = changed.mapv(|value| f64::from(u8::from(value.is_finite())));
                 let cover = self.warp_array(&covered, 0.0, window, pad, frame, resampler).map_err(here)?;

@@ -3,11 +3,16 @@
 use super::run::Findings;
 use crate::coincidence::{Measure, Refusal, Test, VALID_LEVEL, Verdict};
 use crate::conductor::Side;
-use crate::evidence::{Answer, KeyFigure, depth_label, distance_label, significant};
+use crate::evidence::{Answer, KeyFigure, depth_label, distance_label, grouped, significant};
 
 /// How a p-value is printed: never as exact where it stands at the smallest that is resolved.
 fn p_label(p: f64, smallest: f64) -> String {
-    format!("p\u{a0}{}\u{a0}{}", if p <= smallest { "<" } else { "=" }, significant(p, 2))
+    if p > smallest {
+        return format!("p\u{a0}=\u{a0}{}", significant(p, 2));
+    }
+    // A bound is rounded up to two digits, never below what was resolved.
+    let unit = 10f64.powf(p.log10().floor() - 1.0);
+    format!("p\u{a0}<\u{a0}{}", significant((p / unit - 1e-9).ceil() * unit, 2))
 }
 
 impl Findings {
@@ -69,7 +74,12 @@ impl Findings {
         let found: Vec<&Test> = tests.iter().copied().filter(|test| test.verdict == Verdict::Found).collect();
         let enriched: Vec<&Test> = found.iter().copied().filter(|test| test.measure.within().is_some()).collect();
         let judged: Vec<&Test> = tests.iter().copied().filter(|test| test.p_family.is_some()).collect();
-        let best = enriched.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score));
+        // A distance finer than the files' own cells may be found, but does not carry the headline if another can.
+        let order = |test: &Test| (self.resolved(test), test.score);
+        let best = enriched.iter().copied().max_by(|a, b| {
+            let ((a_resolved, a_score), (b_resolved, b_score)) = (order(a), order(b));
+            a_resolved.cmp(&b_resolved).then(a_score.total_cmp(&b_score))
+        });
         let (headline, figures) = match (best, found.is_empty(), judged.is_empty()) {
             (Some(best), ..) => (self.found_headline(best, &enriched), self.key_figures(best)),
             (None, false, _) => (self.correlation_headline(&found, &judged), self.family_figures()),
@@ -158,7 +168,11 @@ impl Findings {
                 note: format!("{} tests, one family", self.comparison.family_tests),
             },
         ];
-        figures.extend(self.family_figures());
+        figures.push(KeyFigure {
+            label: "Independent shifts".into(),
+            value: format!("{:.0}", best.independent_shifts),
+            note: format!("effectively, among {} admissible ones of this test", grouped(best.shifts as f64)),
+        });
         figures
     }
 
@@ -166,7 +180,10 @@ impl Findings {
         vec![KeyFigure {
             label: "Independent shifts".into(),
             value: format!("{:.0}", self.comparison.family_independent_shifts),
-            note: format!("among {} admissible ones of the family", self.comparison.family_shifts),
+            note: format!(
+                "effectively, among {} admissible ones of the family",
+                grouped(self.comparison.family_shifts as f64)
+            ),
         }]
     }
 
@@ -258,20 +275,21 @@ impl Findings {
         if !bare.is_empty() {
             limits.push(format!("No line was found for {}.", list(&bare)));
         }
-        let scarce = tests().filter(|t| t.p.is_some() && t.independent_shifts < 1.0 / VALID_LEVEL - 1.0).count();
+        let scarce = tests().filter(|t| t.p_family.is_some() && t.independent_shifts < 1.0 / VALID_LEVEL - 1.0).count();
         if scarce > 0 {
             limits.push(format!(
                 "{scarce} of {} tests rest on fewer than {:.0} independent shifts: the footprint is only a few pattern \
                  widths across, and their p-values are not told below {VALID_LEVEL}.",
-                tests().count(),
+                self.comparison.family_tests,
                 1.0 / VALID_LEVEL - 1.0
             ));
         }
         limits.push(format!(
-            "Displacement resolves no family-wise p below {} on this footprint, and for single tests less; such values \
-             stand as \u{201c}p <\u{201d}.",
+            "No family-wise p below {} can be told on this footprint, and for most single tests the bound is higher \
+             (column smallest_p); a p at its bound stands as \u{201c}p\u{a0}<\u{201d}.",
             significant(self.comparison.family_smallest_p, 2)
         ));
+        limits.extend(self.limits_of_layers());
         limits.push("No control was taken out: cover, topography or station spacing may shape both maps.".into());
         let outside = self.deposits.iter().filter(|deposit| deposit.cell.is_none()).count();
         if outside > 0 {
@@ -299,7 +317,7 @@ pub(super) fn list(items: &[String]) -> String {
 }
 
 fn percent(share: f64) -> String {
-    format!("{:.0} %", 100.0 * share)
+    format!("{:.0}\u{a0}%", 100.0 * share)
 }
 
 /// The text with a capital letter in front.
@@ -315,6 +333,8 @@ mod tests {
     #[test]
     fn small_p_values_are_never_printed_as_exact() {
         assert_eq!(p_label(0.005, 0.005), "p\u{a0}<\u{a0}0.005");
+        assert_eq!(p_label(0.015_23, 0.015_23), "p\u{a0}<\u{a0}0.016");
+        assert_eq!(p_label(0.05, 0.05), "p\u{a0}<\u{a0}0.05");
         assert_eq!(p_label(0.02, 0.02), "p\u{a0}<\u{a0}0.02");
         assert_eq!(p_label(0.031, 0.005), "p\u{a0}=\u{a0}0.031");
     }

@@ -84,9 +84,11 @@ pub fn compose(choice: &NamedFiles) -> Result<String> {
                 text,
                 "# Depth in metres, positive down, taken from the last number in each file name: CHECK.\nslices = ["
             );
-            for (depth, path) in slices {
+            for (index, (depth, path)) in slices.iter().enumerate() {
+                let again = index > 0 && depth.is_some() && slices[index - 1].0 == *depth;
+                let note = if again { "   # CHECK: the same depth twice" } else { "" };
                 let depth = depth.map_or_else(|| "???".into(), |depth| format!("{depth:?}"));
-                let _ = writeln!(text, "  {{ path = {}, depth = {depth} }},", relative(path));
+                let _ = writeln!(text, "  {{ path = {}, depth = {depth} }},{note}", relative(path));
             }
             text.push_str("]\n");
         }
@@ -109,12 +111,13 @@ pub fn compose(choice: &NamedFiles) -> Result<String> {
             );
             if kind == "magnetic" {
                 text.push_str(
-                    "inclination = ???               # degrees, positive down, for the place and date of the survey\n\
-                     declination = ???               # degrees, positive east\n",
+                    "# Needed: the direction of the earth's field for the place and date of the survey, degrees.\n\
+                     # inclination = 0.0               # positive down\n\
+                     # declination = 0.0               # positive east of true north\n",
                 );
             }
             text.push_str(
-                "# heights = [0.0, 1000.0]         # upward continuation before contacts are picked, m\n\
+                "# heights = [0.0]                 # upward continuation before contacts are picked, m; [0.0, 1000.0] tries both\n\
                  # contacts = { strong = 0.6, weak = 0.3 }   # quantiles of crest strength where lines start and end\n",
             );
         }

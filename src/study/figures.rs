@@ -80,7 +80,7 @@ impl Findings {
     }
 
     /// The stem of a figure's file name for a reference.
-    fn figure_stem(&self, reference: usize) -> String {
+    pub(super) fn figure_stem(&self, reference: usize) -> String {
         let reference = &self.references[reference];
         match reference.height {
             Some(height) => format!("{}_{height}", reference.name),

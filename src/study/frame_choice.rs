@@ -138,17 +138,12 @@ pub(super) fn choose_extent(
     Ok((west, north, count(north - overlap.south), count(overlap.east - west)))
 }
 
-/// Ten distances around the tested ones, from one cell to twice the longest, in whole cells.
+/// About ten distances around the tested ones: even steps of whole cells, up to twice the longest.
 pub(super) fn profile_ladder(within: &[f64], cell: f64) -> Vec<f64> {
     let longest = within.iter().copied().fold(cell, f64::max) * 2.0;
-    let mut ladder: Vec<f64> = Vec::new();
-    for step in 1..=10 {
-        let distance = (longest * f64::from(step) / 10.0 / cell).round().max(1.0) * cell;
-        if !ladder.contains(&distance) {
-            ladder.push(distance);
-        }
-    }
-    ladder
+    let step = (longest / 10.0 / cell).round().max(1.0) * cell;
+    let steps = (longest / step).ceil() as u32;
+    (1..=steps).map(|number| f64::from(number) * step).collect()
 }
 
 #[cfg(test)]
@@ -172,8 +167,12 @@ mod tests {
     }
 
     #[test]
-    fn the_profile_is_a_ladder_of_whole_cells() {
+    fn the_profile_is_an_even_ladder_of_whole_cells() {
         assert_eq!(profile_ladder(&[500.0, 1000.0], 500.0), [500.0, 1000.0, 1500.0, 2000.0]);
-        assert_eq!(profile_ladder(&[1000.0, 5000.0], 250.0).len(), 10);
+        assert_eq!(
+            profile_ladder(&[1000.0, 5000.0], 250.0),
+            (1..=10).map(|k| f64::from(k) * 1000.0).collect::<Vec<_>>()
+        );
+        assert_eq!(profile_ladder(&[3000.0], 500.0).len(), 12);
     }
 }

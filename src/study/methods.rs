@@ -1,6 +1,6 @@
 //! How it was done, in paragraphs made from what was run.
 
-use super::run::Findings;
+use super::run::{DENSITY_PER_MAGNETISATION, Findings};
 use super::settings::PotentialKind;
 use crate::coincidence::{LEAST_OVERLAP, LONGEST_SHIFT, SMALLEST_P};
 use crate::conductor::Threshold;
@@ -19,7 +19,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         "Frame",
         format!(
             "All layers were placed on {} rows x {} columns of {} in {}. {} Values were averaged by area where the cells grow \
-             by more than half, and interpolated by cubic convolution otherwise; resistivity was resampled as log10.",
+             by more than half, and interpolated by cubic convolution otherwise, kept within the range of the file; resistivity was resampled as log10.",
             frame.rows,
             frame.cols,
             distance_label(frame.cell),
@@ -47,13 +47,15 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         ),
         "",
     ));
-    for field in &plan.study.potentials {
+    for (field, planned) in plan.study.potentials.iter().zip(&plan.potentials) {
         let heights: Vec<String> = field.heights.iter().map(|height| distance_label(*height)).collect();
         let first = match field.kind {
             PotentialKind::Gravity | PotentialKind::Other => String::new(),
             PotentialKind::Magnetic { inclination, declination } => format!(
                 "The anomaly was turned into pseudo-gravity with inclination {inclination}\u{b0} and declination \
-                 {declination}\u{b0}, magnetisation taken along the inducing field. "
+                 {declination}\u{b0} from true north ({:.2}\u{b0} from the frame's grid north), magnetisation taken along the \
+                 inducing field and {DENSITY_PER_MAGNETISATION} kg/m\u{b3} of density standing for 1 A/m, a scale that moves no contact. ",
+                declination + plan.true_north
             ),
         };
         steps.push(step(
@@ -62,14 +64,15 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
                 "{first}Gaps were filled for the transform and masked again, a plane was removed, and the grid was padded \
                  beyond its edges. After upward continuation by {}, crests of the horizontal gradient magnitude were found \
                  by quadratic fits in four directions of a 3 x 3 window and traced into lines: from crests above the {} \
-                 quantile of crest strength, followed down to the {} quantile.",
+                 quantile of crest strength, followed down to the {} quantile; lines shorter than {} were dropped.",
                 heights.join(" and "),
                 field.contacts.0,
-                field.contacts.1
+                field.contacts.1,
+                distance_label(planned.least_length)
             ),
             match field.kind {
                 PotentialKind::Magnetic { .. } => {
-                    "Blakely & Simpson 1986 (Geophysics 51, 1494-1498); Baranov 1957 (Geophysics 22, 359-383); Blakely 1995"
+                    "Blakely & Simpson 1986 (Geophysics 51, 1494-1498); Baranov 1957 (Geophysics 22, 359-383); Blakely 1995 (Potential Theory in Gravity and Magnetic Applications, Cambridge University Press)"
                 }
                 _ => "Blakely & Simpson 1986 (Geophysics 51, 1494-1498)",
             },
@@ -94,7 +97,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
              cells in the overlap was standardised as (T - mean T) sqrt(n). p is the share of shifts, the observed one \
              included, that score at least as high. Smoothness of both layers is kept by construction."
         ),
-        "Mrkvicka, Dvorak, Gonzalez & Mateu 2021 (Spatial Statistics)",
+        "Mrkvicka, Dvorak, Gonzalez & Mateu 2021 (Spatial Statistics 42, 100430)",
     ));
     steps.push(step(
         "Family",
@@ -104,7 +107,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
              family-wise p-value. It is judged at {}.",
             findings.comparison.family_tests, plan.study.test.level
         ),
-        "Westfall & Young 1993",
+        "Westfall & Young 1993 (Resampling-Based Multiple Testing, Wiley)",
     ));
     steps.push(step(
         "Guards",
@@ -113,7 +116,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
              scores. No p-value below 1/(1 + that number), nor below {SMALLEST_P}, is printed; a test that cannot reach the \
              level is left empty. Both layers were tested for a slope across the survey."
         ),
-        "Bartlett 1946; Clifford, Richardson & Hemon 1989 (Biometrics 45, 123-134)",
+        "Bartlett 1946 (Supplement to the Journal of the Royal Statistical Society 8, 27-41); Clifford, Richardson & Hemon 1989 (Biometrics 45, 123-134)",
     ));
     steps
 }

@@ -7,6 +7,7 @@ mod figures;
 mod footprints;
 mod frame_choice;
 mod inspect;
+mod limits;
 mod methods;
 mod parse;
 mod plan;

@@ -13,6 +13,7 @@ use super::settings::{
 use crate::conductor::{Quantity, Threshold};
 use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
+use crate::field::InducingField;
 use crate::grid::Source;
 
 /// The seed of a study that names none.
@@ -102,7 +103,10 @@ impl Place<'_> {
                 .wanted("it, since it has no default")
                 .mend(format!("add a line {name} = ... here"));
         }
-        located("the study file").found(message.trim().replace('\n', "; ")).wanted("a valid value here")
+        located("the study file")
+            .found(message.trim().replace('\n', "; "))
+            .wanted("a valid value here")
+            .mend("mend this line; texts stand in quotes, numbers do not")
     }
 
     fn check(&self, keys: StudyKeys) -> Result<Study> {
@@ -302,10 +306,11 @@ impl Place<'_> {
                         .wanted(format!("degrees from -{most} to {most}"))),
                     Some(angle) => Ok(*angle.get_ref()),
                 };
-                PotentialKind::Magnetic {
-                    inclination: angle("inclination", &keys.inclination, 90.0)?,
-                    declination: angle("declination", &keys.declination, 360.0)?,
-                }
+                let inclination = angle("inclination", &keys.inclination, 90.0)?;
+                // The frame's own north comes later and is small; 180 keeps the sum inside what the transform takes.
+                let declination = angle("declination", &keys.declination, 180.0)?;
+                InducingField::new(inclination, declination).map_err(|error| error.file(self.path))?;
+                PotentialKind::Magnetic { inclination, declination }
             }
             other => {
                 let error = match &keys.kind {

@@ -5,9 +5,9 @@ use std::path::PathBuf;
 
 use super::frame_choice::{choose_cell, choose_crs, choose_extent, profile_ladder};
 use super::seen::{Seen, see_slices};
-use super::settings::Study;
+use super::settings::{PotentialKind, Study};
 use crate::error::{Error, Result};
-use crate::grid::{Frame, Resampler, Source, files_of_vector};
+use crate::grid::{Frame, Resampler, Source, files_of_vector, true_north};
 
 /// The most cells that a potential field may use beyond the frame, so that its edges fall outside.
 const MOST_RING: usize = 64;
@@ -19,6 +19,8 @@ pub struct Plan {
     pub study: Study,
     /// The frame.
     pub frame: Frame,
+    /// Azimuth of true north on the frame, degrees clockwise from grid north; 0 where no declination needs it.
+    pub true_north: f64,
     /// Why this frame, a sentence for each choice.
     pub reasons: Vec<String>,
     /// The slices, from the shallowest down.
@@ -95,6 +97,8 @@ impl Plan {
         let cell = choose_cell(&study, &crs, &slices, &potentials, &mut reasons)?;
         let frame = choose_extent(&crs, cell, &slices, &potentials, &mut reasons)?;
         let frame = Frame::new(crs, frame.0, frame.1, cell, frame.2, frame.3).map_err(at_study)?;
+        let magnetic = study.potentials.iter().any(|field| matches!(field.kind, PotentialKind::Magnetic { .. }));
+        let true_north = if magnetic { true_north(&frame).map_err(at_study)? } else { 0.0 };
         let within = study.test.within.clone().unwrap_or_else(|| vec![cell, 2.0 * cell, 4.0 * cell]);
         let profile = study.test.profile.clone().unwrap_or_else(|| profile_ladder(&within, cell));
         let planned_slices =
@@ -120,10 +124,18 @@ impl Plan {
             resistor_area: area(study.conductivity.resistors.as_ref().and_then(|choice| choice.least_area)),
             within,
             profile,
+            true_north,
             reasons,
             frame,
             study,
         })
+    }
+
+    /// No distance beyond this one matters to any measure, m.
+    pub fn farthest(&self) -> f64 {
+        let ladder = self.within.iter().chain(&self.profile).copied();
+        // A cell more, so that the cap itself never counts as within.
+        ladder.fold(self.distance_cap, f64::max) + self.frame.cell
     }
 
     /// How many references the conductors are tested against: each potential field at each height, and each line set.
@@ -199,6 +211,16 @@ impl Plan {
         }
         for (field, planned) in self.study.potentials.iter().zip(&self.potentials) {
             layer(format!("{} ({})", field.name, field.kind.name()), &planned.layer);
+        }
+        for field in &self.study.potentials {
+            if let PotentialKind::Magnetic { inclination, declination } = field.kind {
+                let _ = writeln!(
+                    text,
+                    "  {:<24} inclination {inclination}, declination {declination} from true north, {:.2} from grid north",
+                    "",
+                    declination + self.true_north
+                );
+            }
         }
         for lines in &self.study.lines {
             let _ = writeln!(text, "  {:<24} {}", format!("{} (lines)", lines.name), lines.path.display());

@@ -15,7 +15,7 @@ use crate::conductor::{Side, outlines};
 use crate::error::{Error, Result};
 use crate::evidence::{
     DepthPanel, Input, OutputFolder, Page, PageTable, Provenance, Shape, VectorLayer, depth_label, distance_label,
-    file_stem, hash_file, rfc3339, significant, write_figures, write_geopackage, write_page, write_provenance,
+    file_stem, grouped, hash_file, rfc3339, significant, write_figures, write_geopackage, write_page, write_provenance,
     write_tables,
 };
 use crate::grid::write_raster;
@@ -129,7 +129,10 @@ impl Findings {
             let area: f64 = bodies.bodies.iter().map(|body| body.area_m2).sum();
             let threshold = 10f64.powf(bodies.threshold_log10);
             facts.push(("conductors".into(), bodies.bodies.len().to_string()));
-            facts.push(("conductor area".into(), format!("{} km\u{b2}", significant(area / 1e6, 3))));
+            facts.push((
+                "conductor area".into(),
+                format!("{} km\u{b2}", if area < 1e9 { significant(area / 1e6, 3) } else { grouped(area / 1e6) }),
+            ));
             facts.push(("threshold".into(), format!("below {} \u{3a9} m", significant(threshold, 3))));
         }
         for reference in 0..self.references.len() {

@@ -15,8 +15,8 @@ use crate::error::{Error, Result};
 use crate::field::{InducingField, PreparedField};
 use crate::grid::{Grid, Mask, Placed, distance_to_lines, read_lines};
 
-/// Pseudo-gravity needs a ratio of magnetisation to density; its choice scales the field and moves no contact.
-const MAGNETISATION_PER_DENSITY: f64 = 1e-3;
+/// Density, kg/m3, that stands for 1 A/m of magnetisation in pseudo-gravity; its choice scales the field and moves no contact.
+pub(super) const DENSITY_PER_MAGNETISATION: f64 = 1e-3;
 
 /// A layer that holds fewer distinct values than two cannot be compared.
 const LEAST_SPREAD: f64 = 1e-12;
@@ -177,7 +177,7 @@ fn find_references(plan: &Plan, progress: &dyn Progress) -> Result<(Vec<Placed>,
         // Transforms see the field beyond the frame where it is known, so that edges fall outside.
         let wide = raster.place(planned.layer.band, &plan.frame.grown(planned.ring)?, Ok)?;
         refuse_constant(&wide.grid, &format!("the potential field {:?}", field.name)).map_err(named)?;
-        let prepared = prepare(field, &wide.grid).map_err(named)?;
+        let prepared = prepare(field, &wide.grid, plan.true_north).map_err(named)?;
         for height in &field.heights {
             let found = find_at_height(plan, field, planned, &prepared, *height).map_err(named)?;
             references.push(ReferenceFinding { potential: Some(index), ..found });
@@ -189,13 +189,12 @@ fn find_references(plan: &Plan, progress: &dyn Progress) -> Result<(Vec<Placed>,
     Ok((placed, references))
 }
 
-fn prepare(field: &Potential, grid: &Grid) -> Result<PreparedField> {
+fn prepare(field: &Potential, grid: &Grid, true_north: f64) -> Result<PreparedField> {
     let prepared = PreparedField::new(grid)?;
     match field.kind {
         PotentialKind::Gravity | PotentialKind::Other => Ok(prepared),
-        PotentialKind::Magnetic { inclination, declination } => {
-            prepared.to_pseudo_gravity(InducingField::new(inclination, declination)?, MAGNETISATION_PER_DENSITY)
-        }
+        PotentialKind::Magnetic { inclination, declination } => prepared
+            .to_pseudo_gravity(InducingField::new(inclination, declination + true_north)?, DENSITY_PER_MAGNETISATION),
     }
 }
 
@@ -224,7 +223,7 @@ fn find_at_height(
 
 fn mapped_references(plan: &Plan) -> Result<Vec<ReferenceFinding>> {
     let read = |mapped: &super::settings::MappedLines| {
-        let margin = farthest(plan);
+        let margin = plan.farthest();
         let lines = read_lines(&mapped.path, mapped.layer.as_deref(), mapped.crs.as_deref(), &plan.frame, margin)?;
         Ok(ReferenceFinding {
             name: mapped.name.clone(),
@@ -239,15 +238,8 @@ fn mapped_references(plan: &Plan) -> Result<Vec<ReferenceFinding>> {
     plan.study.lines.iter().map(read).collect()
 }
 
-/// No distance beyond this one matters to any measure.
-fn farthest(plan: &Plan) -> f64 {
-    let ladder = plan.within.iter().chain(&plan.profile).copied();
-    // A cell more, so that the cap itself never counts as within.
-    ladder.fold(plan.distance_cap, f64::max) + plan.frame.cell
-}
-
 fn distances(plan: &Plan, lines: &[LineString<f64>]) -> Array2<f64> {
-    distance_to_lines(&plan.frame, lines, farthest(plan))
+    distance_to_lines(&plan.frame, lines, plan.farthest())
 }
 
 impl ReferenceFinding {

@@ -112,7 +112,7 @@ pub enum PotentialKind {
     Magnetic {
         /// Inclination of the inducing field in degrees, positive down.
         inclination: f64,
-        /// Declination in degrees, positive east of north.
+        /// Declination in degrees, positive east of true north, as reference models give it.
         declination: f64,
     },
     /// Any grid whose gradient marks margins.

@@ -3,7 +3,7 @@
 use super::run::{Findings, SliceFinding};
 use crate::coincidence::{Measure, Test};
 use crate::conductor::{Body, Side};
-use crate::evidence::{Column, Table};
+use crate::evidence::{Column, Table, distance_label, file_stem};
 use crate::grid::{Grid, Placed};
 
 /// Name of the null in tables.
@@ -121,6 +121,17 @@ impl Findings {
                     rows,
                     |t| t.p_family,
                 ),
+                text(
+                    "p_at_bound",
+                    "Whether p_family stands at the smallest value told, so that the true one may be smaller",
+                    rows,
+                    |t| match t.p_family {
+                        Some(p) if p <= self.comparison.family_smallest_p.max(t.smallest_p) => "yes".into(),
+                        Some(_) => "no".into(),
+                        None => String::new(),
+                    },
+                ),
+                text("verdict", "What may be said", rows, |t| t.verdict.to_string()),
                 number(
                     "independent_shifts",
                     "",
@@ -146,7 +157,6 @@ impl Findings {
                 count("footprint_cells", "cells", "Cells where both have data", rows, |t| t.footprint_cells),
                 text("null", "How the subject was displaced", rows, |_| NULL_NAME.into()),
                 text("control", "Layers taken out beforehand", rows, |_| "none".into()),
-                text("verdict", "What may be said", rows, |t| t.verdict.to_string()),
             ],
         }
     }
@@ -213,14 +223,19 @@ impl Findings {
         vec![
             number("depth_m", "m", "Depth of the slice, positive down", rows, |(slice, _)| Some(slice.depth)),
             count("body", "", "Number of the body in its slice, the largest first", rows, |(_, body)| body.id as usize),
+            number("threshold_ohm_m", "ohm m", "Threshold of the slice", rows, |(slice, _)| {
+                slice.side(side).and_then(|bodies| finite(10f64.powf(bodies.threshold_log10)))
+            }),
             count("cells", "cells", "Cells of the body", rows, |(_, body)| body.cells),
             number("area_km2", "km2", "Area of the body", rows, |(_, body)| Some(body.area_m2 / 1e6)),
             number("mean_resistivity_ohm_m", "ohm m", "Geometric mean of the resistivity", rows, |(_, body)| {
                 finite(10f64.powf(body.mean_log10))
             }),
-            number("peak_resistivity_ohm_m", "ohm m", extreme, rows, |(_, body)| finite(10f64.powf(body.peak_log10))),
-            number("peak_x_m", "m", "Easting of that cell", rows, |(_, body)| Some(body.peak.0)),
-            number("peak_y_m", "m", "Northing of that cell", rows, |(_, body)| Some(body.peak.1)),
+            number("extreme_resistivity_ohm_m", "ohm m", extreme, rows, |(_, body)| {
+                finite(10f64.powf(body.peak_log10))
+            }),
+            number("extreme_x_m", "m", "Easting of that cell", rows, |(_, body)| Some(body.peak.0)),
+            number("extreme_y_m", "m", "Northing of that cell", rows, |(_, body)| Some(body.peak.1)),
             number("x_m", "m", "Easting of the centroid", rows, |(_, body)| Some(body.centroid.0)),
             number("y_m", "m", "Northing of the centroid", rows, |(_, body)| Some(body.centroid.1)),
             number("axis_m", "m", "Length of the principal axis", rows, |(_, body)| {
@@ -271,9 +286,12 @@ impl Findings {
                 rows,
                 |(_, _, contact)| finite(1000.0 * contact.mean_strength),
             ),
-            text("dense_side", "Compass point toward the higher values, or inside or outside of a ring", rows, |row| {
-                row.2.dense_side().into()
-            }),
+            text(
+                "dense_side",
+                "Side of the higher values (dense or magnetic ground): a compass point, or inside or outside of a ring",
+                rows,
+                |row| row.2.dense_side().into(),
+            ),
             number("dense_side_deg", "degrees", "Azimuth toward the higher values; empty for a ring", rows, |row| {
                 finite(row.2.dense_side_deg)
             }),
@@ -308,19 +326,18 @@ impl Findings {
                 depths.join("; ")
             }),
         ];
-        if let Some(reference) = self.references.first() {
+        let farthest = self.plan.farthest();
+        for (index, reference) in self.references.iter().enumerate() {
             columns.push(number(
-                "nearest_line_m",
+                &format!("nearest_{}_m", file_stem(&self.figure_stem(index))),
                 "m",
                 &format!(
-                    "Distance of its cell to the nearest line of {}; empty beyond the largest distance that matters",
-                    self.reference_label(0)
+                    "Distance of its cell to the nearest line of {}; empty beyond {}",
+                    self.reference_label(index),
+                    distance_label(farthest)
                 ),
                 rows,
-                |deposit| {
-                    let far = reference.distance.iter().copied().fold(0.0, f64::max);
-                    deposit.cell.map(|cell| reference.distance[cell]).filter(|distance| *distance < far)
-                },
+                |deposit| deposit.cell.map(|cell| reference.distance[cell]).filter(|distance| *distance < farthest),
             ));
         }
         columns
