@@ -22,7 +22,7 @@ fn cases() -> Vec<Case> {
         case(
             "a study that is not TOML",
             |s| s.study("seed = 7", "seed = = 7"),
-            "salband: study.toml, line 2: the study file: found extra `=`, expected nothing; wanted a valid value here.",
+            "salband: study.toml, line 2: the study file: found extra `=`, expected nothing; wanted a valid value here. To mend it: mend this line; texts stand in quotes, numbers do not.",
         ),
         case(
             "an unknown key",
@@ -57,12 +57,12 @@ fn cases() -> Vec<Case> {
         case(
             "magnetics near the equator",
             |s| s.study("kind = \"gravity\"", "kind = \"magnetic\"\ninclination = 4.0\ndeclination = 1.0"),
-            "salband: gravity.tif: the inclination of the magnetic field: found 4 degrees; wanted at least 15 degrees up or down, because reduction to the pole is unstable at low latitudes. To mend it: leave this layer out, or give it as a grid that is already reduced, with kind \"other\".",
+            "salband: study.toml: the inclination of the magnetic field: found 4 degrees; wanted at least 15 degrees up or down, because reduction to the pole is unstable at low latitudes. To mend it: leave this layer out, or give it as a grid that is already reduced, with kind \"other\".",
         ),
         case(
             "the same name twice",
             |s| s.study("[test]", "[[potential]]\nname = \"gravity\"\npath = \"gravity.tif\"\n\n[test]"),
-            "salband: study.toml, line 19: a name: found \"gravity\" a second time; wanted each potential field and line set named once. To mend it: give one of them another name.",
+            "salband: study.toml, line 19: a name: found \"gravity\" a second time; wanted names that differ in more than signs, since they stand in file names. To mend it: give one of them another name.",
         ),
         case(
             "the same depth twice",
@@ -82,7 +82,27 @@ fn cases() -> Vec<Case> {
         case(
             "a level of five",
             |s| s.study("within = [500.0, 1500.0]", "family = 5.0"),
-            "salband: study.toml, line 19: test.family: found 5; wanted a level above 0 and below 1, such as 0.05.",
+            "salband: study.toml, line 19: test.family: found 5; wanted a level from 0.005, the smallest that displacement resolves, to below 1, such as 0.05.",
+        ),
+        case(
+            "distances in kilometres",
+            |s| s.study("within = [500.0, 1500.0]", "within = [0.1, 0.5]"),
+            "salband: study.toml: test.within: found 0.1 m, less than half a cell of 500 m; wanted distances in metres that the cells can show. To mend it: check that the distances are in metres, or choose a smaller frame.cell.",
+        ),
+        case(
+            "a frame on a web map",
+            |s| s.study("EPSG:32633", "EPSG:3857"),
+            "salband: study.toml: the frame's coordinate system: found EPSG:3857, in which a metre is 0.638 m on the ground here; wanted a system made for the area, in which a metre is a metre. To mend it: set frame.crs to one, such as the UTM zone.",
+        ),
+        case(
+            "a starting half-space",
+            |s| s.raster("rho_3000.tif", &Raster::of(&|row, col| if row < 4 { resistivity(row, col) } else { 100.0 })),
+            "salband: rho_3000.tif: the conductors of a slice: found 96 % of the cells at or beyond the 0.8 quantile, because many hold its value, 100.0000 ohm m; wanted about 20 %. To mend it: set a limit in ohm m instead: { below = ... }.",
+        ),
+        case(
+            "a seed too large",
+            |s| s.study("seed = 7", "seed = 9223372036854775808"),
+            "salband: study.toml, line 2: seed: found 9223372036854775808; wanted a whole number from 0 to 9223372036854775807.",
         ),
         case(
             "a control",

@@ -203,6 +203,7 @@ fn a_footprint_too_small_to_shift_is_told_in_words() {
     // Cells of 5 km leave 8 x 8 of them: shifts of up to two cells, 13 in the disc, fewer than 1/.05 ranks need.
     let survey = Survey::new();
     let study = common::STUDY.replace("cell = 500.0", "cell = 5000.0");
+    let study = study.replace("within = [500.0, 1500.0]", "within = [5000.0, 10000.0]");
     survey.file("study.toml", &study.replace("quantile = 0.80", "quantile = 0.80, least_area = 1.0"));
     let ran = survey.salband(&["run", "study.toml", "--out", "out"]);
     assert!(ran.status.success(), "{}", stderr(&ran));

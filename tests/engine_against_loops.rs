@@ -287,3 +287,41 @@ proptest! {
         prop_assert_eq!(on(1), on(2));
     }
 }
+
+#[test]
+fn a_poor_layer_does_not_silence_the_others() {
+    // Four slices on a full square keep to the lines; a fifth exists in a corner only. Alone, the four are found; beside the
+    // fifth they must be found too, with their p-values at most doubled (Bonferroni over two parts).
+    let side = 96;
+    let full = Array2::from_elem((side, side), true);
+    let wave = |row: usize, col: usize| (row as f64 * 0.31).sin() * 4.0 + (col as f64 * 0.13).cos() * 5.0;
+    let distance = Array2::from_shape_fn((side, side), |(row, col)| {
+        let phase = (col as f64 + wave(row, col)).rem_euclid(24.0);
+        phase.min(24.0 - phase)
+    });
+    let near = |at: (usize, usize), seed: usize| {
+        distance[at] < 2.0 && (at.0 * 7 + at.1 * 13 + seed * 5) % 11 < 6
+            || (at.0 * 31 + at.1 * 17 + seed * 3).is_multiple_of(29)
+    };
+    let slices: Vec<Subject> = (0..4)
+        .map(|seed| Subject {
+            footprint: full.clone(),
+            members: Some(Array2::from_shape_fn((side, side), |at| near(at, seed))),
+            strength: None,
+        })
+        .collect();
+    let corner = Array2::from_shape_fn((side, side), |(row, col)| row < 40 && col < 40);
+    let poor = Subject { footprint: corner, ..slices[0].clone() };
+    let reference = Reference { footprint: full, distance: Some(distance.clone()), strength: None };
+    let settings = Settings { within: vec![2.0], profile: vec![], distance_cap: 8.0, level: 0.05 };
+    let alone = compare(&slices, std::slice::from_ref(&reference), &settings).unwrap();
+    let beside = compare(&[slices, vec![poor]].concat(), &[reference], &settings).unwrap();
+    assert_eq!((alone.family_parts, beside.family_parts), (1, 2));
+    let mut found = 0;
+    for (alone, beside) in alone.tests.iter().zip(&beside.tests).filter(|(test, _)| test.p_family.is_some()) {
+        assert!((beside.raw_p_family - (2.0 * alone.raw_p_family).min(1.0)).abs() < 1e-12);
+        assert!(beside.p_family.unwrap() <= 2.0 * alone.p_family.unwrap() + 1e-12);
+        found += usize::from(beside.p_family.unwrap() <= 0.05);
+    }
+    assert_eq!(found, 4, "every slice is found beside the poor one");
+}

@@ -106,6 +106,34 @@ fn a_grid_in_degrees_lands_where_it_belongs() {
 }
 
 #[test]
+fn rasters_across_the_antimeridian_are_read_whole() {
+    // Each cell holds its own easting in UTM 60, from PROJ. Longitudes are written in both ways that files use.
+    let folder = tempfile::tempdir().unwrap();
+    let (geographic, utm) = (Crs::from_definition("EPSG:4326").unwrap(), Crs::from_definition("EPSG:32660").unwrap());
+    let middle = carry(&[(180.0, 10.0)], &geographic, &utm).unwrap()[0];
+    let target = Frame::new(utm.clone(), middle.0 - 20_000.0, middle.1 + 10_000.0, 500.0, 40, 80).unwrap();
+    for west in [179.5, -180.5] {
+        let path = folder.path().join(format!("{west}.tif"));
+        let (rows, cols, step, north) = (80, 200, 0.005, 10.2);
+        let centre = |at: usize| (west + ((at % cols) as f64 + 0.5) * step, north - ((at / cols) as f64 + 0.5) * step);
+        let places: Vec<(f64, f64)> =
+            (0..rows * cols).map(centre).map(|(x, y)| ((x + 540.0) % 360.0 - 180.0, y)).collect();
+        let eastings = carry(&places, &geographic, &utm).unwrap().into_iter().map(|(x, _)| x).collect();
+        let driver = DriverManager::get_driver_by_name("GTiff").unwrap();
+        let mut dataset = driver.create_with_band_type::<f64, _>(&path, cols, rows, 1).unwrap();
+        dataset.set_geo_transform(&[west, step, 0.0, north, 0.0, -step]).unwrap();
+        dataset.set_spatial_ref(&SpatialRef::from_epsg(4326).unwrap()).unwrap();
+        dataset.rasterband(1).unwrap().write((0, 0), (cols, rows), &mut Buffer::new((cols, rows), eastings)).unwrap();
+        dataset.close().unwrap();
+        let values = place(&Source::file(&path).open().unwrap(), 1, &target);
+        let missing = values.iter().filter(|value| value.is_nan()).count();
+        assert_eq!(missing, 0, "from {west}");
+        let error = worst(&target, &values, 0, |x, _| x);
+        assert!(error < 0.1, "from {west}: {error} m");
+    }
+}
+
+#[test]
 fn gaps_stay_gaps_and_half_covered_cells_are_kept() {
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("gaps.tif");

@@ -28,6 +28,9 @@ pub struct Comparison {
     pub family_smallest_p: f64,
     /// How many tests the family holds.
     pub family_tests: usize,
+    /// How many parts the family fell into because footprints differ; their number multiplies its p-values. The three
+    /// numbers above are those of the largest part.
+    pub family_parts: usize,
 }
 
 /// Tests whether the subjects keep to the references more closely than under displacement.
@@ -57,7 +60,7 @@ pub fn compare(subjects: &[Subject], references: &[Reference], settings: &Settin
         .map(|subject| strength_without_plane(&subject.footprint, subject.strength.as_ref()))
         .collect();
     let (groups, group_of) = group_footprints(subjects);
-    let mut family = Family::new(engine.window.reach);
+    let mut family = Family::default();
     let mut tests = Vec::new();
     for (index, reference) in references.iter().enumerate() {
         let fixed = engine.fix(reference);
@@ -72,14 +75,13 @@ pub fn compare(subjects: &[Subject], references: &[Reference], settings: &Settin
             })
             .collect();
         for (test, null) in results.into_iter().flatten() {
-            if let Some(null) = &null {
-                family.add(&null.scores);
-            }
-            tests.push(test);
+            let part = null.map(|null| family.add(&null.scores));
+            tests.push((test, part));
         }
     }
-    tests.sort_by_key(|test| (test.subject, test.reference));
-    Ok(family.judge(tests, settings.level, &engine.lags))
+    tests.sort_by_key(|(test, _)| (test.subject, test.reference));
+    let (tests, parts): (Vec<Test>, Vec<Option<usize>>) = tests.into_iter().unzip();
+    Ok(family.judge(tests, &parts, settings.level, &engine.lags))
 }
 
 /// The different footprints among the subjects, and which one each subject has: slices of one model share theirs.
@@ -114,5 +116,12 @@ fn without_room(subjects: &[Subject], references: &[Reference], settings: &Setti
             }
         }
     }
-    Comparison { tests, family_shifts: 0, family_independent_shifts: 0.0, family_smallest_p: 1.0, family_tests: 0 }
+    Comparison {
+        tests,
+        family_shifts: 0,
+        family_independent_shifts: 0.0,
+        family_smallest_p: 1.0,
+        family_tests: 0,
+        family_parts: 0,
+    }
 }

@@ -22,6 +22,8 @@ pub(super) struct Fixed<'a> {
     /// The footprint, then the ground within each distance: the tested ones, then those of the profile.
     masks: Masks,
     distance: Option<Spectrum>,
+    /// False where all capped distances are one.
+    distances_vary: bool,
     strength: Option<FixedStrength>,
 }
 
@@ -87,7 +89,14 @@ impl Engine<'_> {
             let square = self.layer(&layer.footprint, &values, |value| value * value);
             FixedStrength { trend, plain, square }
         });
+        let mut capped = layer.distance.iter().flat_map(|distance| {
+            let inside = distance.iter().zip(&layer.footprint).filter(|(_, inside)| **inside);
+            inside.map(|(far, _)| far.min(cap))
+        });
+        let first = capped.next();
+        let distances_vary = capped.any(|far| Some(far) != first);
         Fixed {
+            distances_vary,
             footprint: self.mask(&layer.footprint),
             distance: layer.distance.as_ref().map(|far| self.layer(&layer.footprint, far, |far| far.min(cap))),
             masks,
@@ -172,7 +181,12 @@ impl Engine<'_> {
         if let (Some(distance), Some(ground)) = (&fixed.distance, &shared.distance) {
             let sum = self.correlator.sums(&moved, distance);
             let statistic = closeness(&sum, &inside, ground, &shared.overlap);
-            let refusal = (own < 2.0).then_some(Refusal::TooFewMembers { cells: own as usize });
+            let refusal = if own < 2.0 {
+                Some(Refusal::TooFewMembers { cells: own as usize })
+            } else {
+                // Closeness is a difference, so rounding would pass for variation where every distance is the cap.
+                (!fixed.distances_vary).then_some(Refusal::Constant)
+            };
             let (mut test, null) = self.judge(blank(Measure::MeanDistance, true), refusal, &statistic, shared);
             // Told as a distance: what the subject's cells have, against what they would have under the null.
             let ground = ground[zero] / cells;
@@ -250,7 +264,7 @@ impl Engine<'_> {
                 independent_values_with(&self.lags, &null.scores, &pairs)
             };
             test.smallest_p = smallest_p(null.shifts, test.independent_shifts);
-            test.verdict = match enough_shifts(test.smallest_p, test.independent_shifts, self.settings.level) {
+            test.verdict = match enough_shifts(null.shifts, test.independent_shifts, self.settings.level) {
                 Err(refusal) => Verdict::CannotTell(refusal),
                 Ok(()) => {
                     test.p = Some(null.p.max(test.smallest_p));

@@ -22,12 +22,18 @@ pub(super) fn smallest_p(shifts: usize, independent: f64) -> f64 {
 }
 
 /// Refuses where there are next to no independent shifts, or where not even the smallest p-value reaches the level.
-pub(super) fn enough_shifts(smallest: f64, independent: f64, level: f64) -> Result<(), Refusal> {
-    if independent >= LEAST_INDEPENDENT && smallest <= level {
-        return Ok(());
+pub(super) fn enough_shifts(shifts: usize, independent: f64, level: f64) -> Result<(), Refusal> {
+    let needed = (1.0 / level - 1.0).ceil();
+    if (shifts as f64) < needed {
+        return Err(Refusal::TooFewShifts { found: shifts as f64, independent: false, needed });
     }
-    let needed = if level < VALID_LEVEL { (1.0 / level - 1.0).ceil() } else { LEAST_INDEPENDENT };
-    Err(Refusal::TooFewShifts { independent, needed })
+    if independent < LEAST_INDEPENDENT {
+        return Err(Refusal::TooFewShifts { found: independent, independent: true, needed: LEAST_INDEPENDENT });
+    }
+    if smallest_p(shifts, independent) > level {
+        return Err(Refusal::TooFewShifts { found: independent, independent: true, needed });
+    }
+    Ok(())
 }
 
 #[cfg(test)]
@@ -45,9 +51,11 @@ mod tests {
 
     #[test]
     fn too_few_shifts_are_refused_with_the_number_needed() {
-        assert_eq!(enough_shifts(0.05, 8.0, 0.05), Ok(()));
-        let refused = |smallest, independent, level| enough_shifts(smallest, independent, level).unwrap_err();
-        assert_eq!(refused(0.05, 2.5, 0.05), Refusal::TooFewShifts { independent: 2.5, needed: 3.0 });
-        assert_eq!(refused(0.05, 8.0, 0.01), Refusal::TooFewShifts { independent: 8.0, needed: 99.0 });
+        assert_eq!(enough_shifts(1000, 8.0, 0.05), Ok(()));
+        let refused = |shifts, found, level| enough_shifts(shifts, found, level).unwrap_err();
+        let scarce = |found, needed| Refusal::TooFewShifts { found, independent: true, needed };
+        assert_eq!(refused(1000, 2.5, 0.05), scarce(2.5, 3.0));
+        assert_eq!(refused(1000, 8.0, 0.01), scarce(8.0, 99.0));
+        assert_eq!(refused(12, 8.0, 0.05), Refusal::TooFewShifts { found: 12.0, independent: false, needed: 19.0 });
     }
 }

@@ -41,6 +41,8 @@ pub struct Test {
     pub p_family: Option<f64>,
     /// The rank p-value with the whole family counted, before the guards, for calibration; NaN outside the family.
     pub raw_p_family: f64,
+    /// The smallest family-wise p-value that can be told of this test.
+    pub family_smallest_p: f64,
     /// Admissible shifts where the measure is defined, without the shift of zero.
     pub shifts: usize,
     /// How many of them are effectively independent.
@@ -77,6 +79,7 @@ impl Test {
             score: f64::NAN,
             raw_p: f64::NAN,
             raw_p_family: f64::NAN,
+            family_smallest_p: 1.0,
             p: None,
             p_family: None,
             shifts: 0,
@@ -91,8 +94,8 @@ impl Test {
         }
     }
 
-    /// True for the tests that the family binds together.
+    /// True for the tests that the family binds together: those that can tell, and are not descriptions.
     pub(super) fn is_family(&self) -> bool {
-        self.tested && !matches!(self.measure, Measure::MeanDistance) && self.score.is_finite()
+        self.p.is_some() && !matches!(self.measure, Measure::MeanDistance)
     }
 }

@@ -27,7 +27,9 @@ pub enum Refusal {
     /// The footprint holds too few independent shifts to reach the level.
     TooFewShifts {
         /// How many it holds.
-        independent: f64,
+        found: f64,
+        /// True if effectively independent shifts are counted, false for all.
+        independent: bool,
         /// How many would be needed.
         needed: f64,
     },
@@ -47,10 +49,12 @@ impl fmt::Display for Refusal {
                 )
             }
             Self::Constant => f.write_str("cannot tell: a layer is constant here"),
-            Self::TooFewShifts { independent, needed } => write!(
-                f,
-                "cannot tell: this footprint holds {independent:.1} independent shifts, {needed:.0} are needed"
-            ),
+            Self::TooFewShifts { found, independent: true, needed } => {
+                write!(f, "cannot tell: this footprint holds {found:.1} independent shifts, {needed:.0} are needed")
+            }
+            Self::TooFewShifts { found, independent: false, needed } => {
+                write!(f, "cannot tell: this footprint holds {found:.0} shifts, {needed:.0} are needed")
+            }
         }
     }
 }

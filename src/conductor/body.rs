@@ -51,6 +51,9 @@ pub struct Body {
     pub elongation: f64,
 }
 
+/// A quantile may take in this many times its share of cells before it counts as no threshold at all.
+const MOST_TIES: f64 = 1.25;
+
 /// Finds the bodies of a slice of log10 resistivity (ohm m) on one side of a threshold.
 ///
 /// Bodies hang together by sides and corners; those that cover less than `least_area_m2` (m2) are left out, of the mask
@@ -69,7 +72,7 @@ pub struct Body {
 ///
 /// # Errors
 /// A slice without data or with one value throughout; a bad threshold or least area; a mixture that does not
-/// separate. A slice without a body is an outcome, not an error: its list is empty.
+/// separate; a quantile whose value so many cells share that far more than its share would count. A slice without a body is an outcome, not an error: its list is empty.
 pub fn find_bodies(slice: &Grid, side: Side, threshold: Threshold, least_area_m2: f64, seed: u64) -> Result<Bodies> {
     if !(least_area_m2.is_finite() && least_area_m2 >= 0.0) {
         return Err(Error::input(format!("the least area of a {}", side.word()))
@@ -95,6 +98,7 @@ pub fn find_bodies(slice: &Grid, side: Side, threshold: Threshold, least_area_m2
     }
     let threshold_log10 = threshold.of(&known, seed)?;
     let beyond = Mask(slice.values().mapv(|value| side.holds(value, threshold_log10)));
+    refuse_ties(side, threshold, threshold_log10, beyond.count(), known.len())?;
     let frame = slice.frame();
     let mut kept = pieces(&beyond, Connection::SidesAndCorners);
     kept.sort_by_key(|cells| Reverse(cells.len()));
@@ -103,6 +107,26 @@ pub fn find_bodies(slice: &Grid, side: Side, threshold: Threshold, least_area_m2
     let mask = Mask(labels.mapv(|label| label != 0));
     let bodies = (1..).zip(&kept).map(|(id, cells)| body(id, cells, slice.values(), frame, side)).collect();
     Ok(Bodies { threshold_log10, mask, labels, bodies })
+}
+
+/// Refuses a quantile that many cells share, as where an inversion leaves its starting model: all of them would count.
+fn refuse_ties(side: Side, threshold: Threshold, log10: f64, found: usize, cells: usize) -> Result<()> {
+    let Threshold::Quantile(quantile) = threshold else { return Ok(()) };
+    let (wanted, limit) = match side {
+        Side::Conductor => (1.0 - quantile, "below"),
+        Side::Resistor => (quantile, "above"),
+    };
+    if found as f64 <= MOST_TIES * wanted * cells as f64 + 1.0 {
+        return Ok(());
+    }
+    Err(Error::input(format!("the {}s of a slice", side.word()))
+        .found(format!(
+            "{:.0} % of the cells at or beyond the {quantile} quantile, because many hold its value, {:.4} ohm m",
+            100.0 * found as f64 / cells as f64,
+            10.0_f64.powf(log10)
+        ))
+        .wanted(format!("about {:.0} %", 100.0 * wanted))
+        .mend(format!("set a limit in ohm m instead: {{ {limit} = ... }}")))
 }
 
 fn body(id: u32, cells: &[(usize, usize)], values: &Array2<f64>, frame: &Frame, side: Side) -> Body {
@@ -191,6 +215,19 @@ mod tests {
         assert_eq!(count(1.0, 0.0), (0, 0));
         assert_eq!(count(1e6, 0.0), (1, 19));
         assert_eq!(count(100.0, 1e9), (0, 0));
+    }
+
+    #[test]
+    fn a_quantile_that_most_cells_share_is_refused() {
+        let starting = grid(Array2::from_shape_fn((40, 40), |(row, col)| if row == 3 && col < 9 { 1.0 } else { 2.0 }));
+        let refused = |side, q| find_bodies(&starting, side, Threshold::Quantile(q), 0.0, 0).unwrap_err().to_string();
+        assert!(
+            refused(Side::Conductor, 0.8).contains("found 100 % of the cells"),
+            "{}",
+            refused(Side::Conductor, 0.8)
+        );
+        assert!(refused(Side::Resistor, 0.2).contains("above = ..."));
+        assert_eq!(find_bodies(&starting, Side::Conductor, Threshold::Absolute(50.0), 0.0, 0).unwrap().mask.count(), 9);
     }
 
     #[test]

@@ -93,19 +93,19 @@ pub(super) fn create(path: &Path) -> Result<File> {
     File::create_new(path).map_err(|error| Error::ours("creating an output file").file(path).because(error))
 }
 
-/// A name reduced to what every file system takes: letters and digits of ASCII in lower case, `-`, `_` and `.`; any
-/// other run of characters becomes one `-`. Never empty, never hidden.
+/// A name reduced to what every file system takes: letters and digits in lower case, `-`, `_` and `.`; any other run of
+/// characters becomes one `-`. Never empty, never hidden, at most 60 characters.
 pub fn file_stem(name: &str) -> String {
     let mut stem = String::new();
     for letter in name.chars() {
-        if letter.is_ascii_alphanumeric() || matches!(letter, '_' | '.') {
-            stem.push(letter.to_ascii_lowercase());
+        if letter.is_alphanumeric() || matches!(letter, '_' | '.') {
+            stem.extend(letter.to_lowercase());
         } else if !stem.ends_with('-') {
             stem.push('-');
         }
     }
     let stem = stem.trim_matches(['-', '.']);
-    if stem.is_empty() { "unnamed".into() } else { stem.chars().take(100).collect() }
+    if stem.is_empty() { "unnamed".into() } else { stem.chars().take(60).collect() }
 }
 
 /// A table of all columns of all tables: table, column, unit, meaning.
@@ -230,6 +230,6 @@ mod tests {
         assert_eq!(file_stem("../../etc/Passwd"), "etc-passwd");
         assert_eq!(file_stem("gravity 1,000 m"), "gravity-1-000-m");
         assert_eq!(file_stem("\u{1f5fa}"), "unnamed");
-        assert_eq!(file_stem(&"x".repeat(400)).len(), 100);
+        assert_eq!(file_stem(&"x".repeat(400)).len(), 60);
     }
 }

@@ -1,5 +1,7 @@
 //! Coordinate reference systems: from text and from files, and back.
 
+use geo::{Distance, Geodesic, Point};
+
 use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, SpatialRef};
 
 use super::reason::Reason;
@@ -80,6 +82,25 @@ impl Crs {
     }
 }
 
+/// Metres on the ground, along the geodesic, for one metre of a projected system at a place: the mean over 1 km to the east
+/// and 1 km to the north.
+///
+/// # Errors
+/// When the place has no longitude and latitude.
+pub fn ground_scale(crs: &Crs, (x, y): (f64, f64)) -> Result<f64> {
+    let geographic = Crs::from_definition("EPSG:4326")?;
+    let places = carry(&[(x, y), (x + 1000.0, y), (x, y + 1000.0)], crs, &geographic)?;
+    let [here, east, north] =
+        [places[0], places[1], places[2]].map(|(longitude, latitude)| Point::new(longitude, latitude));
+    let scale = (Geodesic.distance(here, east) + Geodesic.distance(here, north)) / 2000.0;
+    if scale.is_finite() && scale > 0.0 {
+        return Ok(scale);
+    }
+    Err(Error::input("the coordinate system")
+        .found(format!("{x}, {y} in {}, which is no place on the earth", crs.name))
+        .wanted("coordinates inside its area"))
+}
+
 /// Azimuth of true north at the middle of a frame, degrees clockwise from grid north.
 ///
 /// # Errors
@@ -136,6 +157,19 @@ mod tests {
         assert_eq!(Crs::utm_at(15.0, 50.0).unwrap().name, "EPSG:32633");
         assert_eq!(Crs::utm_at(151.0, -33.0).unwrap().name, "EPSG:32756");
         assert_eq!(Crs::utm_at(180.0, 1.0).unwrap().name, "EPSG:32601");
+    }
+
+    #[test]
+    fn a_metre_of_a_web_map_is_less_than_one_on_the_ground() {
+        // Spherical Mercator enlarges by about 1 / cos(latitude) (Snyder 1987): at 60 degrees a metre is half a metre, but
+        // for the ellipsoid, which makes some tenths of a percent. UTM is 0.9996 on its central meridian by definition.
+        let [web, utm] = ["EPSG:3857", "EPSG:32633"].map(|code| Crs::from_definition(code).unwrap());
+        let geographic = Crs::from_definition("EPSG:4326").unwrap();
+        let at = |crs: &Crs, longitude, latitude| {
+            ground_scale(crs, carry(&[(longitude, latitude)], &geographic, crs).unwrap()[0]).unwrap()
+        };
+        assert!((at(&web, 15.0, 60.0) - 0.5).abs() < 0.003, "{}", at(&web, 15.0, 60.0));
+        assert!((at(&utm, 15.0, 50.0) - 1.0 / 0.9996).abs() < 1e-5);
     }
 
     #[test]

@@ -16,7 +16,7 @@ mod volume;
 mod warp;
 mod write;
 
-pub use crs::{carry, true_north};
+pub use crs::{carry, ground_scale, true_north};
 pub use describe::describe_layers;
 pub use distance::distance_to_lines;
 pub use files::files_of_vector;

@@ -53,6 +53,17 @@ pub struct Placed {
     pub cells_read: usize,
     /// Those among them that held a number.
     pub cells_with_data: usize,
+    /// The smallest and the largest of those numbers.
+    pub range_read: (f64, f64),
+}
+
+impl Placed {
+    /// The layer with no value outside the range of what was read: cubic convolution overshoots beside steep changes, and
+    /// no resistivity may come out that no cell of the model holds. A potential field is left as it is, for its derivatives.
+    pub fn within_range_read(self) -> Self {
+        let (low, high) = self.range_read;
+        Self { grid: self.grid.map(|value| value.clamp(low, high)), ..self }
+    }
 }
 
 impl Raster {
@@ -61,7 +72,7 @@ impl Raster {
     /// 1. The window of the raster that the frame needs is read; no-data, masks, scale and offset are honoured.
     /// 2. `change` turns it into what is to be resampled, log10 resistivity for example.
     /// 3. GDAL's warper resamples it: area-weighted average when the frame's cells are more than 1.5 times as large,
-    ///    cubic convolution otherwise, kept within the range of what was read. When averaging, a cell with less than half its area covered is missing.
+    ///    cubic convolution otherwise. When averaging, a cell with less than half its area covered is missing.
     ///
     /// # Errors
     /// No overlap with the frame, nothing but no-data in it, data that cannot be read or changed.
@@ -76,11 +87,16 @@ impl Raster {
         let resampler = Resampler::fit_for(raster_cell, frame.cell);
         let margin = 4.0 + 2.0 * (frame.cell / raster_cell).ceil();
         let extent = Extent::of(frame).carried(&frame.crs, &self.crs).map_err(here)?;
-        let window = self.window(extent, margin).ok_or_else(|| here(apart(frame, self)))?;
+        // Longitudes repeat after a turn: a raster may run from 0 to 360 degrees, or across the antimeridian.
+        let turns: &[f64] = if self.crs.geographic { &[0.0, 360.0, -360.0] } else { &[0.0] };
+        let windows = turns.iter().filter_map(|turn| self.window(extent.moved(*turn), margin));
+        let window = windows.max_by_key(|window| window.rows * window.cols).ok_or_else(|| here(apart(frame, self)))?;
         let raw = self.read(band, window)?;
         let cells_read = raw.len();
         let changed = change(raw).map_err(here)?;
-        let cells_with_data = changed.iter().filter(|value| value.is_finite()).count();
+        let finite = || changed.iter().copied().filter(|value| value.is_finite());
+        let cells_with_data = finite().count();
+        let range_read = (finite().fold(f64::INFINITY, f64::min), finite().fold(f64::NEG_INFINITY, f64::max));
         if cells_with_data == 0 {
             return Err(here(
                 Error::input(format!("band {band}"))
@@ -93,12 +109,7 @@ impl Raster {
         let pad = 1 + (frame.cell / raster_cell).ceil() as usize;
         let placed = self.warp_array(&changed, f64::NAN, window, pad, frame, resampler).map_err(here)?;
         let values = match resampler {
-            Resampler::Cubic => {
-                // Cubic convolution overshoots beside steep changes; no value may come out that no cell of the file holds.
-                let finite = || changed.iter().copied().filter(|value| value.is_finite());
-                let (low, high) = (finite().fold(f64::INFINITY, f64::min), finite().fold(f64::NEG_INFINITY, f64::max));
-                placed.mapv(|value| value.clamp(low, high))
-            }
+            Resampler::Cubic => placed,
             Resampler::Average => {
                 let covered = changed.mapv(|value| f64::from(u8::from(value.is_finite())));
                 let cover = self.warp_array(&covered, 0.0, window, pad, frame, resampler).map_err(here)?;
@@ -117,7 +128,7 @@ impl Raster {
         if grid.footprint().is_empty() {
             return Err(here(apart(frame, self)));
         }
-        Ok(Placed { grid, resampler, raster_cell, cells_read, cells_with_data })
+        Ok(Placed { grid, resampler, raster_cell, cells_read, cells_with_data, range_read })
     }
 
     fn warp_array(

@@ -1,6 +1,7 @@
 //! A layer of numbers on a frame.
 
 use ndarray::Array2;
+use ndarray_stats::QuantileExt;
 
 use super::{Frame, Mask};
 use crate::error::{Error, Result};
@@ -66,10 +67,9 @@ impl Grid {
 
     /// The smallest and the largest number, or `None` if there is none.
     pub fn range(&self) -> Option<(f64, f64)> {
-        self.values.iter().filter(|value| !value.is_nan()).fold(None, |range, &value| {
-            let (low, high) = range.unwrap_or((value, value));
-            Some((low.min(value), high.max(value)))
-        })
+        let (low, high) = (*self.values.min_skipnan(), *self.values.max_skipnan());
+        // Both are NaN where every value is missing.
+        low.is_finite().then_some((low, high))
     }
 
     /// The inner part that is left when `ring` cells are cut off each side.

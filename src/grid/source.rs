@@ -96,6 +96,11 @@ impl Extent {
         }
     }
 
+    /// The box moved eastward.
+    pub(super) fn moved(self, by: f64) -> Self {
+        Self { west: self.west + by, east: self.east + by, ..self }
+    }
+
     /// The box of a frame.
     pub fn of(frame: &Frame) -> Self {
         Self { west: frame.west, south: frame.south(), east: frame.east(), north: frame.north }
@@ -123,7 +128,11 @@ impl Extent {
                 .wanted("an area that both systems cover")
                 .mend("check the coordinate system of the layer and of the frame"));
         }
-        let [west, south, east, north] = carried;
+        let [west, south, mut east, north] = carried;
+        // Across the antimeridian the eastern edge comes back as the smaller longitude.
+        if into.geographic && east < west {
+            east += 360.0;
+        }
         Ok(Self { west, south, east, north })
     }
 }
@@ -385,7 +394,12 @@ impl Raster {
         if self.format == "VRT" || self.format == "MEM" {
             return Ok(());
         }
-        let held = std::fs::metadata(&self.path).map_or(0, |data| data.len());
+        // Some formats keep a small header beside the data, others are folders.
+        if self.path.is_dir() {
+            return Ok(());
+        }
+        let held: u64 =
+            self.files().iter().filter_map(|file| std::fs::metadata(file).ok()).map(|data| data.len()).sum();
         let claimed = rows.saturating_mul(cols).saturating_mul(self.bands as u64);
         if claimed / MOST_COMPRESSION > held {
             return Err(Error::input("the raster's header")

@@ -18,7 +18,7 @@ fn p_label(p: f64, smallest: f64) -> String {
 impl Findings {
     /// How a test's family-wise p-value is printed.
     pub(super) fn p_label(&self, test: &Test, p: f64) -> String {
-        p_label(p, self.comparison.family_smallest_p.max(test.smallest_p))
+        p_label(p, test.family_smallest_p)
     }
 
     /// Depth of a test's subject, m.
@@ -123,10 +123,10 @@ impl Findings {
                 significant(best.observed, 2),
                 self.p_label(best, best.p_family.unwrap_or(1.0)),
                 self.comparison.family_tests,
-                if judged.iter().any(|test| test.measure.within().is_some()) {
-                    "the conductors as bodies do not lie closer to its contacts than chance"
+                if judged.iter().any(|test| test.measure.within().is_some() && test.reference == best.reference) {
+                    "the conductors as bodies are not shown to lie closer to its contacts than chance"
                 } else {
-                    "whether the conductors as bodies lie closer to contacts than chance, the data cannot tell"
+                    "whether the conductors as bodies lie closer to its contacts than chance, the data cannot tell"
                 }
             ),
         }
@@ -136,12 +136,21 @@ impl Findings {
         let family = |test: &Test| test.p_family.unwrap_or(1.0);
         let closest = judged.iter().min_by(|a, b| family(a).total_cmp(&family(b)));
         let least = closest.map_or_else(|| "p = 1".into(), |test| self.p_label(test, family(test)));
-        let said = match self.slices.as_slice() {
+        let bodies: Vec<&Test> = judged.iter().copied().filter(|test| test.measure.within().is_some()).collect();
+        let said = match self.depths(bodies.iter().copied()).as_slice() {
+            [] => {
+                return format!(
+                    "The data cannot tell whether conductors keep to the margins; their conductivity is not shown to rise with \
+                     the gradient either ({least} for the closest of {} tests).",
+                    self.comparison.family_tests
+                );
+            }
             [only] => {
-                format!("No: at {} conductors keep to the margins no more closely than chance", depth_label(only.depth))
+                format!("Not shown: at {only}, conductors keep to the margins no more closely than chance may give")
             }
             many => format!(
-                "No: at none of the {} depths do conductors keep to the margins more closely than chance",
+                "Not shown: at none of the {} depths that could be tested do conductors keep to the margins more closely than \
+                 chance may give",
                 many.len()
             ),
         };
@@ -197,7 +206,12 @@ impl Findings {
             let depths = self.depths(found.iter().copied().filter(near));
             let correlated = self.depths(found.iter().copied().filter(with_strength));
             detail.push(match (depths.is_empty(), correlated.is_empty()) {
-                (true, true) => format!("{}: nothing beyond chance.", capital(&label)),
+                (true, true)
+                    if !self.told(|test| test.reference == reference && self.side(test) == Side::Conductor) =>
+                {
+                    format!("{}: the data cannot tell.", capital(&label))
+                }
+                (true, true) => format!("{}: nothing shown beyond chance.", capital(&label)),
                 (false, true) => {
                     format!("{}: conductors lie closer than chance at {}.", capital(&label), list(&depths))
                 }
@@ -219,13 +233,20 @@ impl Findings {
         if !of_resistors.is_empty() {
             let kept = of_resistors.into_iter().filter(|test| test.verdict == Verdict::Found);
             let depths = self.depths(kept);
-            detail.push(if depths.is_empty() {
-                "Resistors lie no closer to any of the margins than chance.".into()
+            detail.push(if !self.told(|test| self.side(test) == Side::Resistor) {
+                "Resistors: the data cannot tell.".into()
+            } else if depths.is_empty() {
+                "Resistors are not shown to lie closer to any of the margins than chance.".into()
             } else {
                 format!("Resistors lie closer to margins than chance at {}.", list(&depths))
             });
         }
         detail
+    }
+
+    /// True if any of some tests has a family-wise p-value.
+    pub(super) fn told(&self, holds: impl Fn(&Test) -> bool) -> bool {
+        self.comparison.tests.iter().any(|test| test.p_family.is_some() && holds(test))
     }
 
     /// What limits the answer, from the guards of the tests.
@@ -289,6 +310,12 @@ impl Findings {
              (column smallest_p); a p at its bound stands as \u{201c}p\u{a0}<\u{201d}.",
             significant(self.comparison.family_smallest_p, 2)
         ));
+        if self.comparison.family_parts > 1 {
+            limits.push(format!(
+                "Footprints differ, so the family fell into {0} parts and each p-value was multiplied by {0}.",
+                self.comparison.family_parts
+            ));
+        }
         limits.extend(self.limits_of_layers());
         limits.push("No control was taken out: cover, topography or station spacing may shape both maps.".into());
         let outside = self.deposits.iter().filter(|deposit| deposit.cell.is_none()).count();

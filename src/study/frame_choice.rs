@@ -5,7 +5,23 @@ use std::path::PathBuf;
 use super::seen::Seen;
 use super::settings::Study;
 use crate::error::{Error, Result};
-use crate::grid::{Crs, Extent, carry};
+use crate::grid::{Crs, Extent, Frame, carry, ground_scale};
+
+/// How far a metre of the frame may be from a metre on the ground: no system made for an area this size comes near it.
+const MOST_DISTORTION: f64 = 0.02;
+
+/// Refuses a frame whose metres are not metres on the ground, as in a world-wide web map.
+pub(super) fn refuse_distortion(frame: &Frame) -> Result<()> {
+    let middle = ((frame.west + frame.east()) / 2.0, (frame.south() + frame.north) / 2.0);
+    let scale = ground_scale(&frame.crs, middle)?;
+    if (scale - 1.0).abs() <= MOST_DISTORTION {
+        return Ok(());
+    }
+    Err(Error::input("the frame's coordinate system")
+        .found(format!("{}, in which a metre is {scale:.3} m on the ground here", frame.crs.name))
+        .wanted("a system made for the area, in which a metre is a metre")
+        .mend("set frame.crs to one, such as the UTM zone"))
+}
 
 /// The frame's coordinate system.
 pub(super) fn choose_crs(
@@ -19,7 +35,14 @@ pub(super) fn choose_crs(
         return Crs::from_definition(stated);
     }
     let all = || slices.iter().map(|(_, seen)| seen).chain(potentials);
-    let metric = |seen: &&Seen| !seen.raster.crs.geographic && (seen.raster.crs.metres_per_unit - 1.0).abs() < 1e-9;
+    let metric = |seen: &&Seen| {
+        let crs = &seen.raster.crs;
+        let extent = seen.raster.extent();
+        let middle = ((extent.west + extent.east) / 2.0, (extent.south + extent.north) / 2.0);
+        !crs.geographic
+            && (crs.metres_per_unit - 1.0).abs() < 1e-9
+            && ground_scale(crs, middle).is_ok_and(|scale| (scale - 1.0).abs() <= MOST_DISTORTION)
+    };
     if let Some(seen) = all().find(metric) {
         reasons.push(format!(
             "The coordinate system is that of the first projected layer in metres, {}.",
@@ -31,7 +54,10 @@ pub(super) fn choose_crs(
     let extent = first.extent();
     let middle = ((extent.west + extent.east) / 2.0, (extent.south + extent.north) / 2.0);
     let (longitude, latitude) = carry(&[middle], &first.crs, &Crs::from_definition("EPSG:4326")?)?[0];
-    reasons.push("No layer is projected in metres, so the UTM zone of the model's middle is taken.".into());
+    reasons.push(
+        "No layer is projected in metres that hold on the ground, so the UTM zone of the model's middle is taken."
+            .into(),
+    );
     Crs::utm_at(longitude, latitude)
 }
 
@@ -76,7 +102,9 @@ pub(super) fn choose_cell(
         "The cell is the coarsest round number that resolves {} ({own:.0} m), the finest layer of the coarser side.",
         path.display()
     ));
-    if let Some(least) = study.test.within.as_ref().and_then(|within| within.first()).filter(|least| **least < cell) {
+    // Not to less than a tenth of the layer's own cell: such a distance is more likely given in another unit.
+    let shortest = study.test.within.as_ref().and_then(|within| within.first());
+    if let Some(least) = shortest.filter(|least| **least < cell && **least >= own / 10.0) {
         cell = *least;
         reasons.push("It is made smaller to resolve the shortest distance tested.".into());
     }
@@ -131,7 +159,11 @@ pub(super) fn choose_extent(
         Some(fields) => model.and(fields).unwrap_or(model),
         None => model,
     };
-    reasons.push("It covers the overlap of the conductivity model with the potential fields.".into());
+    reasons.push(if potentials.is_empty() {
+        "It covers the conductivity model.".into()
+    } else {
+        "It covers the overlap of the conductivity model with the potential fields.".into()
+    });
     let west = (overlap.west / cell + 1e-6).floor() * cell;
     let north = (overlap.north / cell - 1e-6).ceil() * cell;
     let count = |length: f64| ((length / cell - 1e-6).ceil().max(1.0)) as usize;

@@ -1,5 +1,6 @@
 //! What limits the answer because of the layers themselves: thresholds, contacts, cells, footprint.
 
+use super::answer::list;
 use super::run::Findings;
 use crate::coincidence::Test;
 use crate::conductor::Threshold;
@@ -12,7 +13,7 @@ const LONG: f64 = 3.0;
 impl Findings {
     /// Cautions that follow from the layers of this study, with their numbers.
     pub(super) fn limits_of_layers(&self) -> Vec<String> {
-        [self.threshold_limit(), self.contact_limit(), self.cell_limit(), self.footprint_limit()]
+        [self.threshold_limit(), self.contact_limit(), self.cell_limit(), self.footprint_limit(), self.lines_limit()]
             .into_iter()
             .flatten()
             .collect()
@@ -73,6 +74,16 @@ impl Findings {
             self.references[worst.reference].name,
             distance_label(self.coarser_cell(worst).round())
         ))
+    }
+
+    fn lines_limit(&self) -> Option<String> {
+        let names: Vec<String> = self.plan.study.lines.iter().map(|lines| lines.name.clone()).collect();
+        (!names.is_empty()).then(|| {
+            format!(
+                "The lines of {} are taken as mapped over the whole frame; ground that nobody mapped counts as far from them.",
+                list(&names)
+            )
+        })
     }
 
     fn footprint_limit(&self) -> Option<String> {

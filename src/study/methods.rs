@@ -2,7 +2,7 @@
 
 use super::run::{DENSITY_PER_MAGNETISATION, Findings};
 use super::settings::PotentialKind;
-use crate::coincidence::{LEAST_OVERLAP, LONGEST_SHIFT, SMALLEST_P};
+use crate::coincidence::{LEAST_OVERLAP, LONGEST_SHIFT, SMALLEST_P, VALID_LEVEL};
 use crate::conductor::Threshold;
 use crate::evidence::{Method, distance_label, significant};
 
@@ -113,7 +113,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         "Guards",
         format!(
             "The number of effectively independent shifts is the number of shifts over the summed autocorrelation of the \
-             scores. No p-value below 1/(1 + that number), nor below {SMALLEST_P}, is printed; a test that cannot reach the \
+             scores. No p-value is printed below 1/(1 + that number), or below {VALID_LEVEL} where that is smaller (the level was measured to hold there), nor below {SMALLEST_P}; a test that cannot reach the \
              level is left empty. Both layers were tested for a slope across the survey."
         ),
         "Bartlett 1946 (Supplement to the Journal of the Royal Statistical Society 8, 27-41); Clifford, Richardson & Hemon 1989 (Biometrics 45, 123-134)",

@@ -10,9 +10,11 @@ use super::settings::{
     BodyChoice, Conductivity, Deposits, FrameChoice, MappedLines, Model, Potential, PotentialKind, SliceChoice, Study,
     TestChoice,
 };
+use crate::coincidence::SMALLEST_P;
 use crate::conductor::{Quantity, Threshold};
 use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
+use crate::evidence::file_stem;
 use crate::field::InducingField;
 use crate::grid::Source;
 
@@ -131,15 +133,16 @@ impl Place<'_> {
         let mut lines = Vec::new();
         for keys in keys.lines {
             let name = self.name("the name of a [[lines]]", &keys.name)?;
-            if potentials.iter().any(|(other, _)| other.name == name)
-                || lines.iter().any(|l: &MappedLines| l.name == name)
+            let stem = file_stem(&name);
+            if potentials.iter().any(|(other, _)| file_stem(&other.name) == stem)
+                || lines.iter().any(|other: &MappedLines| file_stem(&other.name) == stem)
             {
                 return Err(self.twice(&keys.name));
             }
             lines.push(MappedLines { name, path: self.join(&keys.path), layer: keys.layer, crs: keys.crs });
         }
         for (index, (potential, span)) in potentials.iter().enumerate() {
-            if potentials[..index].iter().any(|(other, _)| other.name == potential.name) {
+            if potentials[..index].iter().any(|(other, _)| file_stem(&other.name) == file_stem(&potential.name)) {
                 return Err(self.twice(&Spanned::new(span.clone(), potential.name.clone())));
             }
         }
@@ -147,7 +150,7 @@ impl Place<'_> {
         Ok(Study {
             path: self.path.to_path_buf(),
             title: keys.title.trim().to_string(),
-            seed: keys.seed.unwrap_or(DEFAULT_SEED),
+            seed: self.seed(keys.seed)?,
             frame: FrameChoice { crs: keys.frame.crs.map(Spanned::into_inner), cell },
             conductivity: self.conductivity(keys.conductivity)?,
             potentials: potentials.into_iter().map(|(potential, _)| potential).collect(),
@@ -238,6 +241,18 @@ impl Place<'_> {
         }
         slices.sort_by(|a, b| a.depth.total_cmp(&b.depth));
         Ok(slices)
+    }
+
+    /// Any whole number that TOML can hold and give back.
+    fn seed(&self, seed: Option<Spanned<u64>>) -> Result<u64> {
+        match seed {
+            Some(seed) if i64::try_from(*seed.get_ref()).is_err() => Err(self
+                .at("seed", seed.span())
+                .found(seed.get_ref())
+                .wanted(format!("a whole number from 0 to {}", i64::MAX))),
+            Some(seed) => Ok(seed.into_inner()),
+            None => Ok(DEFAULT_SEED),
+        }
     }
 
     fn band(&self, band: Option<usize>) -> Result<usize> {
@@ -404,12 +419,11 @@ impl Place<'_> {
         }
         let level = match &keys.family {
             None => DEFAULT_LEVEL,
-            Some(level) if *level.get_ref() > 0.0 && *level.get_ref() < 1.0 => *level.get_ref(),
+            Some(level) if (SMALLEST_P..1.0).contains(level.get_ref()) => *level.get_ref(),
             Some(level) => {
-                return Err(self
-                    .at("test.family", level.span())
-                    .found(level.get_ref())
-                    .wanted("a level above 0 and below 1, such as 0.05"));
+                return Err(self.at("test.family", level.span()).found(level.get_ref()).wanted(format!(
+                    "a level from {SMALLEST_P}, the smallest that displacement resolves, to below 1, such as 0.05"
+                )));
             }
         };
         Ok(TestChoice {
@@ -446,7 +460,7 @@ impl Place<'_> {
     fn twice(&self, name: &Spanned<String>) -> Error {
         self.at("a name", name.span())
             .found(format!("{:?} a second time", name.get_ref()))
-            .wanted("each potential field and line set named once")
+            .wanted("names that differ in more than signs, since they stand in file names")
             .mend("give one of them another name")
     }
 

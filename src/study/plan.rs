@@ -3,7 +3,7 @@
 use std::fmt::Write as _;
 use std::path::PathBuf;
 
-use super::frame_choice::{choose_cell, choose_crs, choose_extent, profile_ladder};
+use super::frame_choice::{choose_cell, choose_crs, choose_extent, profile_ladder, refuse_distortion};
 use super::seen::{Seen, see_slices};
 use super::settings::{PotentialKind, Study};
 use crate::error::{Error, Result};
@@ -97,9 +97,18 @@ impl Plan {
         let cell = choose_cell(&study, &crs, &slices, &potentials, &mut reasons)?;
         let frame = choose_extent(&crs, cell, &slices, &potentials, &mut reasons)?;
         let frame = Frame::new(crs, frame.0, frame.1, cell, frame.2, frame.3).map_err(at_study)?;
+        refuse_distortion(&frame).map_err(at_study)?;
         let magnetic = study.potentials.iter().any(|field| matches!(field.kind, PotentialKind::Magnetic { .. }));
         let true_north = if magnetic { true_north(&frame).map_err(at_study)? } else { 0.0 };
         let within = study.test.within.clone().unwrap_or_else(|| vec![cell, 2.0 * cell, 4.0 * cell]);
+        if let Some(finest) = within.first().filter(|finest| **finest < 0.5 * cell) {
+            return Err(at_study(
+                Error::input("test.within")
+                    .found(format!("{finest} m, less than half a cell of {cell} m"))
+                    .wanted("distances in metres that the cells can show")
+                    .mend("check that the distances are in metres, or choose a smaller frame.cell"),
+            ));
+        }
         let profile = study.test.profile.clone().unwrap_or_else(|| profile_ladder(&within, cell));
         let planned_slices =
             slices.iter().map(|(depth, seen)| Ok(PlannedSlice { depth: *depth, layer: seen.planned(&frame)? }));

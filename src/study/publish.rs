@@ -150,7 +150,11 @@ impl Findings {
         let mut verdicts: Vec<String> =
             (0..self.references.len()).flat_map(|reference| self.verdicts(reference, &tests)).collect();
         if verdicts.is_empty() {
-            verdicts.push("No test at this depth finds conductors closer than chance.".into());
+            let told = self.told(|test| self.depth(test) == depth && self.side(test) == Side::Conductor);
+            verdicts.push(
+                if told { "Nothing shown beyond chance at this depth." } else { "At this depth the data cannot tell." }
+                    .into(),
+            );
         }
         DepthPanel {
             depth_m: depth,

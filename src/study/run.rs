@@ -121,7 +121,9 @@ fn place_slices(plan: &Plan, progress: &dyn Progress) -> Result<Vec<SliceFinding
         let path = &slice.layer.source.path;
         let raster = slice.layer.source.open()?;
         let quantity = study.conductivity.quantity;
-        let placed = raster.place(slice.layer.band, &plan.frame, |values| quantity.to_log10_resistivity(values))?;
+        let placed = raster
+            .place(slice.layer.band, &plan.frame, |values| quantity.to_log10_resistivity(values))?
+            .within_range_read();
         refuse_constant(&placed.grid, &format!("the slice at {} m, in log10 ohm m", slice.depth))
             .map_err(|error| error.file(path))?;
         let find = |choice: &BodyChoice, side, area| {

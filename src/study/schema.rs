@@ -10,7 +10,7 @@ use toml::Spanned;
 #[serde(deny_unknown_fields)]
 pub(super) struct StudyKeys {
     pub title: String,
-    pub seed: Option<u64>,
+    pub seed: Option<Spanned<u64>>,
     #[serde(default)]
     pub frame: FrameKeys,
     pub conductivity: ConductivityKeys,

@@ -12,8 +12,8 @@ impl Plan {
         let study = &self.study;
         let mut file = Table::new();
         file.insert("title".into(), study.title.clone().into());
-        // TOML integers are signed; a seed beyond them is kept as text, as the study file could not hold it either.
-        let seed = i64::try_from(study.seed).map_or_else(|_| Value::String(study.seed.to_string()), Value::Integer);
+        // The study file takes no larger seed.
+        let seed = Value::Integer(i64::try_from(study.seed).unwrap_or(i64::MAX));
         file.insert("seed".into(), seed);
         file.insert(
             "frame".into(),

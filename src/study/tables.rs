@@ -126,7 +126,7 @@ impl Findings {
                     "Whether p_family stands at the smallest value told, so that the true one may be smaller",
                     rows,
                     |t| match t.p_family {
-                        Some(p) if p <= self.comparison.family_smallest_p.max(t.smallest_p) => "yes".into(),
+                        Some(p) if p <= t.family_smallest_p => "yes".into(),
                         Some(_) => "no".into(),
                         None => String::new(),
                     },

@@ -205,10 +205,14 @@ pub fn naive_compare(subjects: &[Subject], reference: &Reference, settings: &Set
                 shifts: scores.len() - 1,
                 independent,
             });
-            if measure != Measure::MeanDistance {
+            if measure != Measure::MeanDistance && told.last().is_some_and(|test| test.p.is_some()) {
                 family.push(scores);
             }
         }
+    }
+    // Tests that cannot tell are no members of the family.
+    if family.is_empty() {
+        return told;
     }
     let everywhere = |at: &(isize, isize)| family.iter().all(|scores| scores.iter().any(|(other, _)| other == at));
     let shifts: Vec<(isize, isize)> = family[0].iter().map(|(at, _)| *at).filter(everywhere).collect();
@@ -220,7 +224,7 @@ pub fn naive_compare(subjects: &[Subject], reference: &Reference, settings: &Set
     let independent = independent(&largest);
     let least = floor(largest.len() - 1, independent);
     let enough = independent >= 3.0 && least <= settings.level;
-    for test in told.iter_mut().filter(|test| test.measure != Measure::MeanDistance) {
+    for test in told.iter_mut().filter(|test| test.measure != Measure::MeanDistance && test.p.is_some()) {
         let adjusted = rank(&largest, test.score);
         test.raw_p_family = Some(adjusted);
         if let (Some(p), true) = (test.p, enough) {
