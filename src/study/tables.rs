@@ -7,7 +7,7 @@ use crate::evidence::{Column, Table, distance_label, file_stem};
 use crate::grid::{Grid, Placed};
 
 /// Name of the null in tables.
-const NULL_NAME: &str = "shifts without wrapping, variance-corrected";
+const NULL_NAME: &str = "shifts without wrapping";
 
 /// A number, or an empty cell where it is not one.
 fn finite(value: f64) -> Option<f64> {
