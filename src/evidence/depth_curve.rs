@@ -3,41 +3,17 @@
 use super::axis::{Scale, range};
 use super::figure::{Canvas, Figure, WIDTH, path_data};
 use super::number::depth_label;
+use super::reading::Reading;
 
 /// One depth of a [`DepthCurve`].
 #[derive(Debug, Clone, PartialEq)]
 pub struct DepthRow {
     /// Depth, m, positive down.
     pub depth_m: f64,
-    /// What was observed; `None` where the data cannot tell.
-    pub observed: Option<f64>,
-    /// The 2.5 % point of the null.
-    pub null_low: Option<f64>,
-    /// The mean of the null.
-    pub null_mean: Option<f64>,
-    /// The 97.5 % point of the null.
-    pub null_high: Option<f64>,
-    /// The p-value adjusted for the family; `None` where there is none.
-    pub p_family: Option<f64>,
+    /// The measure and its null.
+    pub reading: Reading,
     /// At most a dozen letters at the end of the row, such as `p = 0.012` or `too small`.
     pub label: String,
-}
-
-impl DepthRow {
-    fn finite(&self) -> Self {
-        Self {
-            observed: finite(self.observed),
-            null_low: finite(self.null_low),
-            null_mean: finite(self.null_mean),
-            null_high: finite(self.null_high),
-            ..self.clone()
-        }
-    }
-}
-
-/// The number, if it is one.
-pub(super) fn finite(value: Option<f64>) -> Option<f64> {
-    value.filter(|value| value.is_finite())
 }
 
 /// A measure against depth: one row for each depth, evenly spaced, from the shallowest down.
@@ -66,11 +42,12 @@ const TOP: f64 = 62.0;
 impl DepthCurve {
     /// Draws the figure. Numbers that are not finite count as absent.
     pub fn draw(&self) -> Figure {
-        let rows: Vec<DepthRow> = self.rows.iter().map(DepthRow::finite).collect();
+        let readings: Vec<Reading> = self.rows.iter().map(|row| row.reading.finite()).collect();
+        let rows = &self.rows;
         let step = if rows.len() > 14 { 25.0 } else { 34.0 };
         let bottom = TOP + step * rows.len().max(1) as f64;
         let mut canvas = Canvas::new(&self.name, &self.title, &self.description, bottom + 76.0 + KEY_HEIGHT);
-        let values = rows.iter().flat_map(|row| [row.observed, row.null_low, row.null_high, row.null_mean]);
+        let values = readings.iter().flat_map(|r| [r.observed, r.null_low, r.null_high, r.null_mean]);
         let scale = Scale::new(range(values.flatten().chain(self.neutral), 0.07), (LEFT, WIDTH - RIGHT));
         let row_at = |index: usize| TOP + step * (index as f64 + 0.5);
 
@@ -82,25 +59,25 @@ impl DepthCurve {
         if let Some(neutral) = self.neutral {
             canvas.line("sb-neutral", (scale.at(neutral), TOP), (scale.at(neutral), bottom));
         }
-        for (index, row) in rows.iter().enumerate() {
-            if let (Some(low), Some(high)) = (row.null_low, row.null_high) {
+        for (index, reading) in readings.iter().enumerate() {
+            if let (Some(low), Some(high)) = (reading.null_low, reading.null_high) {
                 let (start, end) = (scale.at(low), scale.at(high));
                 canvas.rectangle("sb-band", (start, row_at(index) - step * 0.27), (end - start, step * 0.54));
             }
-            if let Some(mean) = row.null_mean.map(|mean| scale.at(mean)) {
+            if let Some(mean) = reading.null_mean.map(|mean| scale.at(mean)) {
                 canvas.line("sb-mean", (mean, row_at(index) - step * 0.27), (mean, row_at(index) + step * 0.27));
             }
         }
-        for (index, pair) in rows.windows(2).enumerate() {
+        for (index, pair) in readings.windows(2).enumerate() {
             if let (Some(above), Some(below)) = (pair[0].observed, pair[1].observed) {
                 let points = [(scale.at(above), row_at(index)), (scale.at(below), row_at(index + 1))];
                 canvas.outline("sb-observed", path_data(points, false));
             }
         }
-        for (index, row) in rows.iter().enumerate() {
+        for (index, (row, reading)) in rows.iter().zip(&readings).enumerate() {
             let baseline = row_at(index) + 5.0;
-            let established = row.p_family.is_some_and(|p| p <= self.alpha);
-            if let Some(observed) = row.observed {
+            let established = reading.p_family.is_some_and(|p| p <= self.alpha);
+            if let Some(observed) = reading.observed {
                 canvas.marker((scale.at(observed), row_at(index)), 5.0, established);
             }
             let weight = if established { "sb-strong" } else { "" };
@@ -137,7 +114,8 @@ mod tests {
 
     fn row(depth_m: f64, observed: Option<f64>, p_family: Option<f64>) -> DepthRow {
         let (null_low, null_mean, null_high) = (Some(0.7), Some(1.0), Some(1.3));
-        DepthRow { depth_m, observed, null_low, null_mean, null_high, p_family, label: "p <script>".into() }
+        let reading = Reading { observed, null_low, null_mean, null_high, p_family };
+        DepthRow { depth_m, reading, label: "p <script>".into() }
     }
 
     fn curve(rows: Vec<DepthRow>) -> String {
@@ -167,7 +145,8 @@ mod tests {
     #[test]
     fn nothing_to_draw_is_still_a_figure() {
         assert!(!curve(vec![]).contains("NaN"));
-        let bare = DepthRow { null_low: Some(f64::NAN), ..row(500.0, Some(f64::INFINITY), None) };
+        let mut bare = row(500.0, Some(f64::INFINITY), None);
+        bare.reading.null_low = Some(f64::NAN);
         let svg = curve(vec![bare]);
         assert!(!svg.contains("NaN") && !svg.contains("inf"));
     }

@@ -1,25 +1,18 @@
 //! A measure against distance, one small chart for each depth.
 
 use super::axis::{Scale, range};
-use super::depth_curve::{KEY_HEIGHT, finite, key};
+use super::depth_curve::{KEY_HEIGHT, key};
 use super::figure::{Canvas, Figure, WIDTH, path_data};
 use super::number::depth_label;
+use super::reading::Reading;
 
 /// One distance of a [`ProfilePanel`].
 #[derive(Debug, Clone, PartialEq)]
 pub struct ProfilePoint {
     /// The distance within which the measure was taken, m.
     pub within_m: f64,
-    /// What was observed; `None` where the data cannot tell.
-    pub observed: Option<f64>,
-    /// The 2.5 % point of the null.
-    pub null_low: Option<f64>,
-    /// The mean of the null.
-    pub null_mean: Option<f64>,
-    /// The 97.5 % point of the null.
-    pub null_high: Option<f64>,
-    /// The p-value adjusted for the family; `None` where there is none.
-    pub p_family: Option<f64>,
+    /// The measure and its null.
+    pub reading: Reading,
 }
 
 /// The chart of one depth.
@@ -82,11 +75,13 @@ impl DistanceProfile {
         let left = LEFT + (index % 2) as f64 * (PANEL_WIDTH + GAP);
         let top = TOP + (index / 2) as f64 * PITCH;
         let (right, bottom) = (left + PANEL_WIDTH, top + PANEL_HEIGHT);
-        let values = self.points().flat_map(|point| [point.observed, point.null_low, point.null_high]);
-        let up = Scale::new(range(values.filter_map(finite).chain(self.neutral), 0.06), (bottom, top));
+        let values =
+            self.points().map(|point| point.reading.finite()).flat_map(|r| [r.observed, r.null_low, r.null_high]);
+        let up = Scale::new(range(values.flatten().chain(self.neutral), 0.06), (bottom, top));
         let (_, furthest) = range(self.points().map(|point| point.within_m), 0.0);
         let across = Scale::new((0.0, furthest * 1.04 / 1000.0), (left, right));
-        let at = |point: &ProfilePoint, value: f64| (across.at(point.within_m / 1000.0), up.at(value));
+        let points: Vec<(f64, Reading)> =
+            panel.points.iter().map(|point| (across.at(point.within_m / 1000.0), point.reading.finite())).collect();
 
         let selected = self.selected_m == Some(panel.depth_m);
         let weight = if selected { "sb-strong" } else { "" };
@@ -101,28 +96,26 @@ impl DistanceProfile {
             canvas.line("sb-tick", (across.at(value), bottom), (across.at(value), bottom + 4.0));
             canvas.text("sb-small", (across.at(value), bottom + 19.0), "middle", &label);
         }
-        let shown = |value: fn(&ProfilePoint) -> Option<f64>| {
-            panel.points.iter().filter_map(move |point| finite(value(point)).map(|value| at(point, value)))
+        let shown = |value: fn(&Reading) -> Option<f64>| {
+            points.iter().filter_map(move |(x, reading)| value(reading).map(|value| (*x, up.at(value))))
         };
-        let band: Vec<&ProfilePoint> = panel
-            .points
-            .iter()
-            .filter(|point| finite(point.null_low).is_some() && finite(point.null_high).is_some())
-            .collect();
-        let upper = band.iter().filter_map(|point| point.null_high.map(|value| at(point, value)));
-        let lower = band.iter().rev().filter_map(|point| point.null_low.map(|value| at(point, value)));
+        let band =
+            points.iter().filter_map(|(x, reading)| Some((*x, up.at(reading.null_low?), up.at(reading.null_high?))));
+        let band: Vec<(f64, f64, f64)> = band.collect();
+        let upper = band.iter().map(|(x, _, high)| (*x, *high));
+        let lower = band.iter().rev().map(|(x, low, _)| (*x, *low));
         canvas.outline("sb-band", path_data(upper.chain(lower), true));
         if let Some(neutral) = self.neutral {
             canvas.line("sb-neutral", (left, up.at(neutral)), (right, up.at(neutral)));
         }
-        canvas.outline("sb-mean", path_data(shown(|point| point.null_mean), false));
-        canvas.outline("sb-observed", path_data(shown(|point| point.observed), false));
-        for point in &panel.points {
-            if let Some(observed) = finite(point.observed) {
-                canvas.marker(at(point, observed), 4.0, point.p_family.is_some_and(|p| p <= self.alpha));
+        canvas.outline("sb-mean", path_data(shown(|reading| reading.null_mean), false));
+        canvas.outline("sb-observed", path_data(shown(|reading| reading.observed), false));
+        for (x, reading) in &points {
+            if let Some(observed) = reading.observed {
+                canvas.marker((*x, up.at(observed)), 4.0, reading.p_family.is_some_and(|p| p <= self.alpha));
             }
         }
-        if panel.points.iter().all(|point| finite(point.observed).is_none()) {
+        if points.iter().all(|(_, reading)| reading.observed.is_none()) {
             canvas.text("sb-small sb-place", ((left + right) / 2.0, top + 16.0), "middle", "not tested");
         }
         canvas.line("sb-tick", (left, bottom), (right, bottom));
@@ -137,11 +130,13 @@ mod tests {
     fn each_depth_has_a_chart_and_each_point_a_marker() {
         let point = |within_m: f64, p: f64| ProfilePoint {
             within_m,
-            observed: Some(1.5),
-            null_low: Some(0.8),
-            null_mean: Some(1.0),
-            null_high: Some(1.2),
-            p_family: Some(p),
+            reading: Reading {
+                observed: Some(1.5),
+                null_low: Some(0.8),
+                null_mean: Some(1.0),
+                null_high: Some(1.2),
+                p_family: Some(p),
+            },
         };
         let panel = |depth_m: f64| ProfilePanel { depth_m, points: vec![point(500.0, 0.01), point(1000.0, 0.2)] };
         let profile = DistanceProfile {

@@ -14,6 +14,7 @@
 //! | `colours`, `picture` | colour maps, and arrays as PNG |
 //! | `figure`, `axis` | what every figure shares: canvas, classes, scales and ticks |
 //! | `map` (with `map_shapes`, `map_border`, `map_key`) | a map of one depth |
+//! | `reading` | a measure as observed, with its null |
 //! | `depth_curve` | a measure against depth with its null band |
 //! | `distance_profile` | a measure against distance, one small chart for each depth |
 //! | `page`, `page_view` | the report page: its data, and how it becomes HTML |
@@ -39,6 +40,7 @@ mod page;
 mod page_view;
 mod picture;
 mod provenance;
+mod reading;
 mod table;
 
 pub use colours::Colours;
@@ -54,4 +56,5 @@ pub use number::{depth_label, distance_label, grouped, significant};
 pub use page::{Answer, DepthPanel, KeyFigure, Method, Page, PageTable, write_page};
 pub use picture::{data_uri, png};
 pub use provenance::{Input, Provenance, hash_file, write_provenance};
+pub use reading::Reading;
 pub use table::{Table, dictionary, file_stem, write_tables};

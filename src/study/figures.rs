@@ -6,7 +6,7 @@ use crate::conductor::{Side, outlines};
 use crate::error::Result;
 use crate::evidence::{
     Background, Colours, ContactLine, Deposit, DepthCurve, DepthRow, DistanceProfile, Figure, MapFigure, ProfilePanel,
-    ProfilePoint, depth_label, distance_label,
+    ProfilePoint, Reading, depth_label, distance_label,
 };
 use crate::grid::Grid;
 
@@ -163,11 +163,13 @@ impl Findings {
         let finite = |value: f64| value.is_finite().then_some(value);
         DepthRow {
             depth_m: self.depth(test),
-            observed: finite(test.observed),
-            null_low: finite(test.low),
-            null_mean: finite(test.expected),
-            null_high: finite(test.high),
-            p_family: test.p_family,
+            reading: Reading {
+                observed: finite(test.observed),
+                null_low: finite(test.low),
+                null_mean: finite(test.expected),
+                null_high: finite(test.high),
+                p_family: test.p_family,
+            },
             label: match (test.p_family, &test.verdict) {
                 (Some(p), _) => self.p_label(test, p),
                 (None, Verdict::CannotTell(_)) => "cannot tell".into(),
@@ -182,14 +184,7 @@ impl Findings {
         for test in tests {
             let Some(within) = test.measure.within() else { continue };
             let row = self.depth_row(test);
-            let point = ProfilePoint {
-                within_m: within,
-                observed: row.observed,
-                null_low: row.null_low,
-                null_mean: row.null_mean,
-                null_high: row.null_high,
-                p_family: row.p_family,
-            };
+            let point = ProfilePoint { within_m: within, reading: row.reading };
             match panels.iter_mut().find(|panel| panel.depth_m == row.depth_m) {
                 Some(panel) => panel.points.push(point),
                 None => panels.push(ProfilePanel { depth_m: row.depth_m, points: vec![point] }),
