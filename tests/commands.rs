@@ -110,6 +110,14 @@ fn mapped_lines_are_a_reference_like_any_other() {
         }
     }
     assert_eq!(seen, 2, "two depths");
+    // Lines alone will do as well; with no gradient to draw, the map lies over the resistivity.
+    let text = std::fs::read_to_string(survey.path("study.toml")).unwrap();
+    let (start, end) = (text.find("[[potential]]").unwrap(), text.find("[[lines]]").unwrap());
+    survey.file("lines.toml", &format!("{}{}", &text[..start], &text[end..]));
+    let ran = survey.salband(&["run", "lines.toml", "--out", "lines"]);
+    assert!(ran.status.success(), "{}", stderr(&ran));
+    let map = std::fs::read_to_string(survey.path("lines/figures/map_1000.svg")).unwrap();
+    assert!(map.contains("Resistivity, log10"), "the legend says what lies underneath");
 }
 
 #[test]

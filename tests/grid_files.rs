@@ -41,6 +41,16 @@ fn write_tiff(path: &Path, frame: &Frame, south_up: bool, value: impl Fn(f64, f6
     band.write((0, 0), (frame.cols, frame.rows), &mut buffer).unwrap();
 }
 
+/// Writes a GeoTIFF in longitude and latitude (EPSG:4326) with its corner at `west`, `north` and cells of `step` degrees.
+fn write_degrees(path: &Path, (rows, cols): (usize, usize), [west, north, step]: [f64; 3], values: Vec<f64>) {
+    let driver = DriverManager::get_driver_by_name("GTiff").unwrap();
+    let mut dataset = driver.create_with_band_type::<f64, _>(path, cols, rows, 1).unwrap();
+    dataset.set_geo_transform(&[west, step, 0.0, north, 0.0, -step]).unwrap();
+    dataset.set_spatial_ref(&SpatialRef::from_epsg(4326).unwrap()).unwrap();
+    dataset.rasterband(1).unwrap().write((0, 0), (cols, rows), &mut Buffer::new((cols, rows), values)).unwrap();
+    dataset.close().unwrap();
+}
+
 fn plane(x: f64, y: f64) -> f64 {
     0.002 * (x - 500_000.0) - 0.003 * (y - 5_600_000.0) + 7.0
 }
@@ -92,12 +102,7 @@ fn a_grid_in_degrees_lands_where_it_belongs() {
     let centre = |row: usize, col: usize| (west + (col as f64 + 0.5) * step, north - (row as f64 + 0.5) * step);
     let centres: Vec<(f64, f64)> = (0..rows * cols).map(|i| centre(i / cols, i % cols)).collect();
     let eastings: Vec<f64> = carry(&centres, &geographic, &utm).unwrap().into_iter().map(|(x, _)| x).collect();
-    let driver = DriverManager::get_driver_by_name("GTiff").unwrap();
-    let mut dataset = driver.create_with_band_type::<f64, _>(&path, cols, rows, 1).unwrap();
-    dataset.set_geo_transform(&[west, step, 0.0, north, 0.0, -step]).unwrap();
-    dataset.set_spatial_ref(&SpatialRef::from_epsg(4326).unwrap()).unwrap();
-    dataset.rasterband(1).unwrap().write((0, 0), (cols, rows), &mut Buffer::new((cols, rows), eastings)).unwrap();
-    dataset.close().unwrap();
+    write_degrees(&path, (rows, cols), [west, north, step], eastings);
     let target = Frame::new(utm, 500_000.0, 5_595_000.0, 500.0, 40, 50).unwrap();
     let raster = Source::file(&path).open().unwrap();
     assert!(raster.crs.geographic);
@@ -119,12 +124,7 @@ fn rasters_across_the_antimeridian_are_read_whole() {
         let places: Vec<(f64, f64)> =
             (0..rows * cols).map(centre).map(|(x, y)| ((x + 540.0) % 360.0 - 180.0, y)).collect();
         let eastings = carry(&places, &geographic, &utm).unwrap().into_iter().map(|(x, _)| x).collect();
-        let driver = DriverManager::get_driver_by_name("GTiff").unwrap();
-        let mut dataset = driver.create_with_band_type::<f64, _>(&path, cols, rows, 1).unwrap();
-        dataset.set_geo_transform(&[west, step, 0.0, north, 0.0, -step]).unwrap();
-        dataset.set_spatial_ref(&SpatialRef::from_epsg(4326).unwrap()).unwrap();
-        dataset.rasterband(1).unwrap().write((0, 0), (cols, rows), &mut Buffer::new((cols, rows), eastings)).unwrap();
-        dataset.close().unwrap();
+        write_degrees(&path, (rows, cols), [west, north, step], eastings);
         let values = place(&Source::file(&path).open().unwrap(), 1, &target);
         let missing = values.iter().filter(|value| value.is_nan()).count();
         assert_eq!(missing, 0, "from {west}");

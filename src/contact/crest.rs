@@ -30,8 +30,6 @@ pub struct CrestPoint {
     pub strength: f64,
     /// In how many of the four directions (2 to 4) the cell stands above its neighbours.
     pub directions: u8,
-    /// Azimuth toward which the field rises, degrees clockwise from grid north in [0, 360): toward dense ground for gravity.
-    pub uphill: f64,
 }
 
 /// Crest points in row order, at most one for a cell.
@@ -61,14 +59,10 @@ pub fn crest_points(gradient: &Gradient) -> Result<Vec<CrestPoint>> {
             let strength = &strength;
             (1..cols.saturating_sub(1)).filter_map(move |col| crest_at(strength, row, col, RISE * largest))
         })
-        .map(|point| {
-            let (east, north) = (gradient.east()[point.cell], gradient.north()[point.cell]);
-            CrestPoint { uphill: east.atan2(north).to_degrees().rem_euclid(360.0), ..point }
-        })
         .collect())
 }
 
-/// The crest in one cell, its azimuth still 0.
+/// The crest in one cell.
 fn crest_at(strength: &Array2<f64>, row: usize, col: usize, rise: f64) -> Option<CrestPoint> {
     let middle = strength[[row, col]];
     let mut directions = 0;
@@ -101,7 +95,6 @@ fn crest_at(strength: &Array2<f64>, row: usize, col: usize, rise: f64) -> Option
         col: col as f64 + best.1,
         strength: best.2,
         directions,
-        uphill: 0.0,
     })
 }
 
@@ -130,7 +123,7 @@ mod tests {
         assert_eq!(crests.len(), 5);
         for crest in crests {
             assert!((crest.col - 4.3).abs() < 1e-9 && (crest.strength - 30.0).abs() < 1e-9);
-            assert_eq!((crest.cell.1, crest.directions, crest.uphill), (4, 3, 90.0));
+            assert_eq!((crest.cell.1, crest.directions), (4, 3));
             assert_eq!(crest.row, crest.cell.0 as f64);
         }
     }

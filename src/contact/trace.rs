@@ -144,8 +144,8 @@ mod tests {
             for (col, byte) in line.bytes().enumerate() {
                 if byte.is_ascii_digit() {
                     let strength = f64::from(byte - b'0');
-                    let (cell, uphill) = ((row, col), 0.0);
-                    crests.push(CrestPoint { cell, row: row as f64, col: col as f64, strength, directions: 2, uphill });
+                    let cell = (row, col);
+                    crests.push(CrestPoint { cell, row: row as f64, col: col as f64, strength, directions: 2 });
                 }
             }
         }

@@ -39,8 +39,6 @@ pub struct DistanceProfile {
     pub neutral: Option<f64>,
     /// A marker is filled where `p_family` is at or below this.
     pub alpha: f64,
-    /// The depth whose chart is set off, if any, m.
-    pub selected_m: Option<f64>,
     /// The charts, in the order in which they are drawn.
     pub panels: Vec<ProfilePanel>,
 }
@@ -83,9 +81,7 @@ impl DistanceProfile {
         let points: Vec<(f64, Reading)> =
             panel.points.iter().map(|point| (across.at(point.within_m / 1000.0), point.reading.finite())).collect();
 
-        let selected = self.selected_m == Some(panel.depth_m);
-        let weight = if selected { "sb-strong" } else { "" };
-        canvas.text(weight, (left, top - 8.0), "start", &depth_label(panel.depth_m));
+        canvas.text("", (left, top - 8.0), "start", &depth_label(panel.depth_m));
         for (value, label) in up.ticks(4) {
             canvas.line("sb-rule", (left, up.at(value)), (right, up.at(value)));
             if index.is_multiple_of(2) {
@@ -146,13 +142,11 @@ mod tests {
             measure: "Enrichment".into(),
             neutral: Some(1.0),
             alpha: 0.05,
-            selected_m: Some(900.0),
             panels: vec![panel(500.0), panel(900.0), panel(1500.0)],
         };
         let svg = profile.draw().svg;
         assert_eq!(svg.matches("class=\"sb-full\"").count(), 3 + 1);
         assert_eq!(svg.matches("class=\"sb-hollow\"").count(), 3 + 1);
-        assert_eq!(svg.matches("class=\"sb-strong\"").count(), 1);
         assert!(!svg.contains("<b>") && !svg.contains("NaN"));
         let empty = DistanceProfile { panels: vec![], ..profile };
         assert!(!empty.draw().svg.contains("NaN"));

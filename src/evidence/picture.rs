@@ -87,14 +87,14 @@ mod tests {
     #[test]
     fn pixels_decode_to_the_right_colours() {
         let values = array![[0.0, 10.0, f64::NAN], [20.0, -5.0, 5.0]];
-        let bytes = png(&values, (0.0, 10.0), Colours::WarmHigh).unwrap();
+        let bytes = png(&values, (0.0, 10.0), Colours::WarmLow).unwrap();
         let mut reader = png::Decoder::new(Cursor::new(&bytes)).read_info().unwrap();
         let mut pixels = vec![0; reader.output_buffer_size().unwrap()];
         let info = reader.next_frame(&mut pixels).unwrap();
         assert_eq!((info.width, info.height), (3, 2));
         let pixel = |row: usize, col: usize| <[u8; 4]>::try_from(&pixels[4 * (row * 3 + col)..][..4]).unwrap();
         let colour = |position: f64| {
-            let [r, g, b] = Colours::WarmHigh.at(position);
+            let [r, g, b] = Colours::WarmLow.at(position);
             [r, g, b, 255]
         };
         assert_eq!(pixel(0, 0), colour(0.0));

@@ -1,6 +1,6 @@
 //! Mapped lines from a vector file, carried onto the frame.
 
-use std::path::Path;
+use std::path::PathBuf;
 
 use gdal::vector::LayerAccess;
 use gdal::{Dataset, DatasetOptions, GdalOpenFlags};
@@ -11,31 +11,30 @@ use super::source::silence_gdal;
 use super::{Crs, Frame, carry};
 use crate::error::{Error, Result};
 
+/// Which lines to read, as the user names them.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LineSource {
+    /// Path of the vector file.
+    pub path: PathBuf,
+    /// The layer in it; `None` takes the first.
+    pub layer: Option<String>,
+    /// The coordinate system, stated by the user; it takes the place of the file's own.
+    pub crs: Option<String>,
+}
+
 /// Reads all lines of one layer of a vector file in the frame's system; outlines of polygons count as lines.
 ///
-/// `layer` names the layer (the first if `None`), `stated` the coordinate system where the file has none or a wrong one.
 /// Lines that stay outside the frame, grown by `margin` metres on each side, are left out.
 ///
 /// # Errors
 /// A file that is not there or not a vector file, no such layer, no coordinate system, points that have no place in the
 /// frame's system, or no line near the frame.
-pub fn read_lines(
-    path: &Path,
-    layer: Option<&str>,
-    stated: Option<&str>,
-    frame: &Frame,
-    margin: f64,
-) -> Result<Vec<LineString<f64>>> {
-    read(path, layer, stated, frame, margin).map_err(|error| error.file(path))
+pub fn read_lines(source: &LineSource, frame: &Frame, margin: f64) -> Result<Vec<LineString<f64>>> {
+    read(source, frame, margin).map_err(|error| error.file(&source.path))
 }
 
-fn read(
-    path: &Path,
-    layer: Option<&str>,
-    stated: Option<&str>,
-    frame: &Frame,
-    margin: f64,
-) -> Result<Vec<LineString<f64>>> {
+fn read(LineSource { path, layer, crs }: &LineSource, frame: &Frame, margin: f64) -> Result<Vec<LineString<f64>>> {
+    let (layer, stated) = (layer.as_deref(), crs.as_deref());
     silence_gdal();
     if !path.exists() {
         return Err(Error::input("the file")

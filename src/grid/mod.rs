@@ -21,7 +21,7 @@ pub use describe::describe_layers;
 pub use distance::distance_to_lines;
 pub use files::files_of_vector;
 pub use frame::{Crs, Frame};
-pub use lines::read_lines;
+pub use lines::{LineSource, read_lines};
 pub use mask::Mask;
 pub use place::{Placed, Resampler};
 pub use plane::Plane;

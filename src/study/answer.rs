@@ -54,16 +54,15 @@ impl Findings {
 
     /// The question, in one sentence.
     pub(super) fn question(&self) -> String {
-        let mut names: Vec<&str> = Vec::new();
-        for reference in &self.references {
-            if !names.contains(&reference.name.as_str()) {
-                names.push(&reference.name);
-            }
-        }
+        let study = &self.plan.study;
+        let fields: Vec<String> = study.potentials.iter().map(|field| field.name.clone()).collect();
+        let lines: Vec<String> = study.lines.iter().map(|lines| lines.name.clone()).collect();
+        let margins = (!fields.is_empty()).then(|| format!("the margins in {}", list(&fields)));
+        let mapped = (!lines.is_empty()).then(|| format!("the lines of {}", list(&lines)));
+        let both: Vec<String> = margins.into_iter().chain(mapped).collect();
         format!(
-            "Do the conductors keep to the margins in {} more closely than chance would give, at which depth and within \
-             what distance?",
-            list(&names.iter().map(|name| (*name).to_string()).collect::<Vec<_>>())
+            "Do the conductors keep to {} more closely than chance would give, at which depth and within what distance?",
+            list(&both)
         )
     }
 
@@ -98,12 +97,13 @@ impl Findings {
         let within = best.measure.within().unwrap_or(f64::NAN);
         format!(
             "Yes, at {}: conductors keep to {} more closely than chance. At {}, {} of their area lies within {} of a \
-             contact line against {} of the ground; that is {} times what displacement gives ({} with all {} tests counted).",
+             {} against {} of the ground; that is {} times what displacement gives ({} with all {} tests counted).",
             list(&depths),
             self.reference_label(best.reference),
             depth_label(self.depth(best)),
             percent(best.subject_share),
             distance_label(within),
+            if self.references[best.reference].potential.is_some() { "contact line" } else { "line" },
             percent(best.ground_share),
             significant(best.effect, 3),
             self.p_label(best, best.p_family.unwrap_or(1.0)),
@@ -216,7 +216,7 @@ impl Findings {
                     format!("{}: conductors lie closer than chance at {}.", capital(&label), list(&depths))
                 }
                 (true, false) => format!(
-                    "{}: conductivity rises with gradient strength at {}, with no closeness of the bodies themselves.",
+                    "{}: conductivity rises with gradient strength at {}; the bodies themselves are not shown to lie closer.",
                     capital(&label),
                     list(&correlated)
                 ),
@@ -257,8 +257,8 @@ impl Findings {
             tests().filter(|test| matches!(test.verdict, Verdict::CannotTell(Refusal::TooFewShifts { .. }))).collect();
         if !short.is_empty() {
             limits.push(format!(
-                "{} of {} tests cannot tell, because the footprint holds next to no independent displacement; they are left \
-                 empty, not counted as negative.",
+                "{} of {} tests cannot tell, because the footprint holds too few displacements to reach the level; they are \
+                 left empty, not counted as negative.",
                 short.len(),
                 tests().count()
             ));

@@ -8,7 +8,6 @@ use crate::evidence::{
     Background, Colours, ContactLine, Deposit, DepthCurve, DepthRow, DistanceProfile, Figure, MapFigure, ProfilePanel,
     ProfilePoint, Reading, depth_label, distance_label,
 };
-use crate::grid::Grid;
 
 impl Findings {
     /// One map for each depth, over the gradient of the first potential field at its first height.
@@ -41,23 +40,29 @@ impl Findings {
         let draw = |slice: &super::run::SliceFinding| {
             let shapes = outlines(&slice.conductors, frame);
             let footprint = slice.placed.grid.footprint();
-            let background = gradient.as_ref().zip(reference).map(|(grid, reference): (&Grid, _)| Background {
-                grid,
-                colours: Colours::Quiet,
-                label: format!("Gradient of {}, {unit}/km", reference.name),
-            });
+            // Where no field has a gradient, as with mapped lines alone, the slice itself lies underneath.
+            let (background, underneath) = match gradient.as_ref().zip(reference) {
+                Some((grid, reference)) => {
+                    let label = format!("Gradient of {}, {unit}/km", reference.name);
+                    (Background { grid, colours: Colours::Quiet, label }, "the gradient strength")
+                }
+                None => {
+                    let (grid, label) = (&slice.placed.grid, "Resistivity, log10 \u{3a9} m".into());
+                    (Background { grid, colours: Colours::WarmLow, label }, "the resistivity")
+                }
+            };
             MapFigure {
                 name: format!("map_{}", slice.depth),
                 title: format!("Conductors at {}", depth_label(slice.depth)),
                 description: format!(
-                    "Map of {} conductors at {} over the gradient strength, with {} contact lines and {} deposits.",
+                    "Map of {} conductors at {} over {underneath}, with {} contact lines and {} deposits.",
                     shapes.len(),
                     depth_label(slice.depth),
                     lines.len(),
                     deposits.len()
                 ),
                 frame,
-                background,
+                background: Some(background),
                 footprint: Some(&footprint),
                 conductors: &shapes,
                 contacts: &lines,
@@ -129,7 +134,6 @@ impl Findings {
             measure: "Enrichment (ratio)".into(),
             neutral: Some(1.0),
             alpha: self.plan.study.test.level,
-            selected_m: None,
             panels: self.panels(&tests),
         };
         vec![(curve.draw(), caption), (profile.draw(), distances)]

@@ -16,7 +16,7 @@ use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
 use crate::evidence::file_stem;
 use crate::field::InducingField;
-use crate::grid::Source;
+use crate::grid::{LineSource, Source};
 
 /// The seed of a study that names none.
 pub const DEFAULT_SEED: u64 = 1;
@@ -139,7 +139,8 @@ impl Place<'_> {
             {
                 return Err(self.twice(&keys.name));
             }
-            lines.push(MappedLines { name, path: self.join(&keys.path), layer: keys.layer, crs: keys.crs });
+            let source = LineSource { path: self.join(&keys.path), layer: keys.layer, crs: keys.crs };
+            lines.push(MappedLines { name, source });
         }
         for (index, (potential, span)) in potentials.iter().enumerate() {
             if potentials[..index].iter().any(|(other, _)| file_stem(&other.name) == file_stem(&potential.name)) {

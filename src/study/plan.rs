@@ -232,7 +232,7 @@ impl Plan {
             }
         }
         for lines in &self.study.lines {
-            let _ = writeln!(text, "  {:<24} {}", format!("{} (lines)", lines.name), lines.path.display());
+            let _ = writeln!(text, "  {:<24} {}", format!("{} (lines)", lines.name), lines.source.path.display());
         }
         let distances: Vec<String> = self.within.iter().map(|within| format!("{within}")).collect();
         let _ = writeln!(text, "\nTests:");
@@ -269,7 +269,7 @@ impl Plan {
         let mut files: Vec<PathBuf> = Vec::new();
         let slices = self.slices.iter().flat_map(|slice| slice.layer.files.clone());
         let potentials = self.potentials.iter().flat_map(|field| field.layer.files.clone());
-        let lines = self.study.lines.iter().flat_map(|lines| files_of_vector(&lines.path));
+        let lines = self.study.lines.iter().flat_map(|lines| files_of_vector(&lines.source.path));
         let deposits = self.study.deposits.iter().map(|deposits| deposits.path.clone());
         for path in slices.chain(potentials).chain(lines).chain(deposits) {
             if !files.contains(&path) {

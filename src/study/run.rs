@@ -225,8 +225,7 @@ fn find_at_height(
 
 fn mapped_references(plan: &Plan) -> Result<Vec<ReferenceFinding>> {
     let read = |mapped: &super::settings::MappedLines| {
-        let margin = plan.farthest();
-        let lines = read_lines(&mapped.path, mapped.layer.as_deref(), mapped.crs.as_deref(), &plan.frame, margin)?;
+        let lines = read_lines(&mapped.source, &plan.frame, plan.farthest())?;
         Ok(ReferenceFinding {
             name: mapped.name.clone(),
             potential: None,

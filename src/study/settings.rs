@@ -3,7 +3,7 @@
 use std::path::PathBuf;
 
 use crate::conductor::{Quantity, Threshold};
-use crate::grid::Source;
+use crate::grid::{LineSource, Source};
 
 /// A study whose every value has been checked; the layers have not been opened yet.
 #[derive(Debug, Clone)]
@@ -144,12 +144,8 @@ impl PotentialKind {
 pub struct MappedLines {
     /// Their name in tables and on the page.
     pub name: String,
-    /// The vector file.
-    pub path: PathBuf,
-    /// The layer in it; `None` takes the first.
-    pub layer: Option<String>,
-    /// The coordinate system, stated by the user.
-    pub crs: Option<String>,
+    /// The vector file and what to read of it.
+    pub source: LineSource,
 }
 
 /// Known deposits.

@@ -54,9 +54,9 @@ impl Plan {
         let lines = study.lines.iter().map(|lines| {
             let mut keys = Table::new();
             keys.insert("name".into(), lines.name.clone().into());
-            keys.insert("path".into(), study.named(&lines.path).into());
-            insert_text(&mut keys, "layer", &lines.layer);
-            insert_text(&mut keys, "crs", &lines.crs);
+            keys.insert("path".into(), study.named(&lines.source.path).into());
+            insert_text(&mut keys, "layer", &lines.source.layer);
+            insert_text(&mut keys, "crs", &lines.source.crs);
             Value::Table(keys)
         });
         insert_list(&mut file, "lines", lines.collect());

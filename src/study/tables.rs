@@ -66,23 +66,29 @@ impl Findings {
         }
     }
 
+    /// Which subject at which depth is told of, against which reference: the first columns of every table of tests.
+    fn place_columns(&self, rows: &[&Test]) -> Vec<Column> {
+        vec![
+            number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
+            text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
+            text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
+            number(
+                "height_m",
+                "m",
+                "Height of upward continuation before contacts are picked; empty for mapped lines",
+                rows,
+                |t| self.references[t.reference].height,
+            ),
+        ]
+    }
+
     fn coincidence_table(&self) -> Table {
         let rows: Vec<&Test> = self.comparison.tests.iter().filter(|test| test.tested).collect();
         let rows = rows.as_slice();
         Table {
             name: "coincidence".into(),
             caption: "One row for each test of a subject against a reference.".into(),
-            columns: vec![
-                number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
-                text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
-                text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
-                number(
-                    "height_m",
-                    "m",
-                    "Height of upward continuation before contacts are picked; empty for mapped lines",
-                    rows,
-                    |t| self.references[t.reference].height,
-                ),
+            columns: [self.place_columns(rows), vec![
                 text(
                     "measure",
                     "enrichment: share of the subject within the distance over the share of all cells within it; \
@@ -157,7 +163,7 @@ impl Findings {
                 count("footprint_cells", "cells", "Cells where both have data", rows, |t| t.footprint_cells),
                 text("null", "How the subject was displaced", rows, |_| NULL_NAME.into()),
                 text("control", "Layers taken out beforehand", rows, |_| "none".into()),
-            ],
+            ]].concat(),
         }
     }
 
@@ -175,29 +181,29 @@ impl Findings {
                 "Enrichment against distance, with the pointwise null band; only the rows marked as tested belong to \
                       the family."
                     .into(),
-            columns: vec![
-                number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
-                text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
-                text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
-                number("height_m", "m", "Height of upward continuation; empty for mapped lines", rows, |t| {
-                    self.references[t.reference].height
-                }),
-                number("within_m", "m", "The distance", rows, |t| t.measure.within()),
-                text("tested", "Whether this distance belongs to the family of tests", rows, |t| {
-                    if t.tested { "yes" } else { "no" }.into()
-                }),
-                number("subject_share", "", "Share of the subject's cells within the distance", rows, |t| {
-                    finite(t.subject_share)
-                }),
-                number("ground_share", "", "Share of all cells within the distance", rows, |t| finite(t.ground_share)),
-                number("enrichment", "", "The first share over the second", rows, |t| finite(t.observed)),
-                number("null_mean", "", "Mean enrichment over all admissible shifts", rows, |t| finite(t.expected)),
-                number("null_low", "", "2.5 % point of the enrichment over the shifts", rows, |t| finite(t.low)),
-                number("null_high", "", "97.5 % point of the enrichment over the shifts", rows, |t| finite(t.high)),
-                number("p_family", "", "p-value with the whole family counted, for tested distances", rows, |t| {
-                    t.p_family
-                }),
-            ],
+            columns: [
+                self.place_columns(rows),
+                vec![
+                    number("within_m", "m", "The distance", rows, |t| t.measure.within()),
+                    text("tested", "Whether this distance belongs to the family of tests", rows, |t| {
+                        if t.tested { "yes" } else { "no" }.into()
+                    }),
+                    number("subject_share", "", "Share of the subject's cells within the distance", rows, |t| {
+                        finite(t.subject_share)
+                    }),
+                    number("ground_share", "", "Share of all cells within the distance", rows, |t| {
+                        finite(t.ground_share)
+                    }),
+                    number("enrichment", "", "The first share over the second", rows, |t| finite(t.observed)),
+                    number("null_mean", "", "Mean enrichment over all admissible shifts", rows, |t| finite(t.expected)),
+                    number("null_low", "", "2.5 % point of the enrichment over the shifts", rows, |t| finite(t.low)),
+                    number("null_high", "", "97.5 % point of the enrichment over the shifts", rows, |t| finite(t.high)),
+                    number("p_family", "", "p-value with the whole family counted, for tested distances", rows, |t| {
+                        t.p_family
+                    }),
+                ],
+            ]
+            .concat(),
         }
     }
 
