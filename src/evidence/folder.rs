@@ -92,7 +92,7 @@ impl OutputFolder {
             }
             sync_folder(&self.parent).map_err(failed)?;
             // The new folder stands; an old one that cannot be deleted is removed by the next run.
-            let _ = fs::remove_dir_all(&old);
+            let _ = leftovers::discard(&old, &leftovers::sibling(&self.parent, &self.name, "gone"));
         } else {
             fs::rename(&self.partial, &self.target).map_err(failed)?;
             sync_folder(&self.parent).map_err(failed)?;
@@ -281,6 +281,31 @@ mod tests {
         fs::create_dir(&old).unwrap();
         written(&target, "second", true).unwrap();
         assert!(!old.exists());
+
+        // Killed while the old folder was being deleted, the target since removed: what is left of it never comes back.
+        let gone = home.path().join(format!(".out.gone-{dead}"));
+        fs::create_dir(&gone).unwrap();
+        fs::write(gone.join(MARK), "half").unwrap();
+        fs::remove_dir_all(&target).unwrap();
+        let folder = OutputFolder::prepare(&target, false).unwrap();
+        assert!(!target.exists() && !gone.exists());
+        drop(folder);
+    }
+
+    #[test]
+    fn an_old_folder_is_renamed_before_it_is_deleted() {
+        // Put back by `clean` is only what is called old, so no folder of that name may ever be half deleted: the deletion
+        // is stopped here by a file in the way of the new name, and the old folder must then be whole.
+        let home = tempfile::tempdir().unwrap();
+        let (old, gone) = (home.path().join(".out.old-1"), home.path().join(".out.gone-1"));
+        fs::create_dir(&old).unwrap();
+        fs::write(old.join(MARK), "whole").unwrap();
+        fs::write(&gone, "in the way").unwrap();
+        assert!(leftovers::discard(&old, &gone).is_err());
+        assert_eq!(fs::read_to_string(old.join(MARK)).unwrap(), "whole");
+        fs::remove_file(&gone).unwrap();
+        leftovers::discard(&old, &gone).unwrap();
+        assert!(!old.exists() && !gone.exists());
     }
 
     #[test]

@@ -1,6 +1,7 @@
 //! What a run that was killed left beside its target.
 
 use std::fs::{self, File, TryLockError};
+use std::io;
 use std::path::{Path, PathBuf};
 use std::process;
 
@@ -30,12 +31,23 @@ pub(super) fn clean(parent: &Path, name: &str, target: &Path) {
         }
         // A failure to clean costs disk space, not correctness: the run itself does not depend on it.
         let _ = match kind {
-            "partial" => fs::remove_dir_all(&path),
+            "partial" | "gone" => fs::remove_dir_all(&path),
             "old" if target.symlink_metadata().is_err() => fs::rename(&path, target),
-            "old" => fs::remove_dir_all(&path),
+            "old" => discard(&path, &path.with_file_name(format!(".{name}.gone-{pid}"))),
             _ => Ok(()),
         };
     }
+}
+
+/// Deletes an old folder under another name, `gone`: one that is half deleted must not be taken for a complete one and put
+/// back, should the run be killed meanwhile and the target be absent the next time.
+pub(super) fn discard(old: &Path, gone: &Path) -> io::Result<()> {
+    // Sorted before the old ones, an earlier half-deleted folder of this name is usually cleaned already.
+    if gone.exists() {
+        fs::remove_dir_all(gone)?;
+    }
+    fs::rename(old, gone)?;
+    fs::remove_dir_all(gone)
 }
 
 /// True if the process is known to be gone. Our own number is taken for an earlier owner's (in a container each run may get
