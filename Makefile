@@ -23,7 +23,7 @@ check: system
 
 bench: system
 	benches/peer/prepare
-	PATH="$(CURDIR)/target/peer/bin:$$PATH" cargo bench --locked --bench engine --bench whole_run
+	PATH="$(CURDIR)/target/peer/bin:$$PATH" cargo bench --locked --bench engine --bench fields --bench whole_run
 
 calibrate: system
 	cargo bench --locked --bench calibrate -- DEVELOPERS.md

@@ -44,7 +44,7 @@ fn main() -> Result<(), Failure> {
         strength: None,
     });
     let subjects: Vec<Subject> = subjects.collect();
-    let reference = [Reference { footprint, distance: Some(far), strength: None }];
+    let reference = [Reference { footprint, distance: Some(far), strength: None, ..Reference::default() }];
     let settings = Settings { within: WITHIN.to_vec(), profile: vec![], distance_cap: CAP, level: 0.05 };
     let whole = best(REPEATS, || compare(&subjects, &reference, &settings).map(|found| found.family_tests));
     println!("sums and statistics  {sums:.4} s, of which the transforms alone {transforms:.4} s");

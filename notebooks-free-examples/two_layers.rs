@@ -34,7 +34,7 @@ fn main() -> Result<(), salband::Error> {
         cafes[[row, col]] = land[[row, col]];
     }
     let subject = Subject { footprint: land.clone(), members: Some(cafes), strength: None };
-    let reference = Reference { footprint: land, distance: Some(distance), strength: None };
+    let reference = Reference { footprint: land, distance: Some(distance), strength: None, ..Reference::default() };
     let settings = Settings { within: vec![1.5, 3.0, 6.0], profile: vec![], distance_cap: 12.0, level: 0.05 };
     let comparison = compare(&[subject], &[reference], &settings)?;
     for test in &comparison.tests {

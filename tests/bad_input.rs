@@ -27,12 +27,12 @@ fn cases() -> Vec<Case> {
         case(
             "an unknown key",
             |s| s.study("seed = 7", "sead = 7"),
-            "salband: study.toml, line 2: a key: found \"sead\", which is not known here; wanted one of: title, seed, frame, conductivity, potential, lines, control, deposits, test. To mend it: if you meant \"seed\", write that; otherwise take the key out.",
+            "salband: study.toml, line 2: a key: found \"sead\", which is not known here; wanted one of: title, seed, frame, conductivity, potential, lines, units, control, deposits, test. To mend it: if you meant \"seed\", write that; otherwise take the key out.",
         ),
         case(
             "an unknown key deep down",
             |s| s.study("kind = \"gravity\"", "knd = \"gravity\""),
-            "salband: study.toml, line 16: a key: found \"knd\", which is not known here; wanted one of: name, path, kind, band, variable, crs, heights, inclination, declination, contacts. To mend it: if you meant \"kind\", write that; otherwise take the key out.",
+            "salband: study.toml, line 16: a key: found \"knd\", which is not known here; wanted one of: name, path, kind, band, variable, crs, heights, inclination, declination, year, magnetisation, noise, contacts. To mend it: if you meant \"kind\", write that; otherwise take the key out.",
         ),
         case(
             "no title",
@@ -52,12 +52,92 @@ fn cases() -> Vec<Case> {
         case(
             "magnetics without angles",
             |s| s.study("kind = \"gravity\"", "kind = \"magnetic\""),
-            "salband: study.toml, line 14: potential \"gravity\": found no inclination; wanted inclination and declination in degrees, since contacts are picked on pseudo-gravity. To mend it: add inclination = ... for the place and date of the survey.",
+            "salband: study.toml, line 14: potential \"gravity\": found no inclination; wanted inclination and declination in degrees, or the year of the survey, since contacts are picked on pseudo-gravity. To mend it: add inclination = ... and declination = ..., or year = ... such as 2012.5.",
         ),
         case(
-            "magnetics near the equator",
-            |s| s.study("kind = \"gravity\"", "kind = \"magnetic\"\ninclination = 4.0\ndeclination = 1.0"),
-            "salband: study.toml: the inclination of the magnetic field: found 4 degrees; wanted at least 15 degrees up or down, because reduction to the pole is unstable at low latitudes. To mend it: leave this layer out, or give it as a grid that is already reduced, with kind \"other\".",
+            "an inclination beyond the vertical",
+            |s| s.study("kind = \"gravity\"", "kind = \"magnetic\"\ninclination = 94.0\ndeclination = 1.0"),
+            "salband: study.toml, line 17: inclination: found 94; wanted degrees from -90 to 90.",
+        ),
+        case(
+            "a direction given twice",
+            |s| {
+                s.study(
+                    "kind = \"gravity\"",
+                    "kind = \"magnetic\"\ninclination = 60.0\ndeclination = 1.0\nyear = 2012.0",
+                )
+            },
+            "salband: study.toml, line 14: potential \"gravity\": found year beside inclination or declination; wanted inclination and declination in degrees, or the year of the survey, since contacts are picked on pseudo-gravity. To mend it: keep one of the two.",
+        ),
+        case(
+            "a year that the reference model does not cover",
+            |s| s.study("kind = \"gravity\"", "kind = \"magnetic\"\nyear = 2031.5"),
+            "salband: study.toml, line 17: year: found 2031.5; wanted a year from 1900 to 2025, which IGRF-13 covers. To mend it: give inclination and declination from a model that covers the survey.",
+        ),
+        case(
+            "a magnetisation in gravity",
+            |s| s.study("kind = \"gravity\"", "magnetisation = { inclination = 10.0, declination = 2.0 }"),
+            "salband: study.toml, line 16: magnetisation: found it in a field of kind \"gravity\"; wanted it in a magnetic field only. To mend it: take it out, or set kind = \"magnetic\".",
+        ),
+        case(
+            "a noise below zero",
+            |s| s.study("kind = \"gravity\"", "noise = -0.1"),
+            "salband: study.toml, line 16: noise: found -0.1; wanted a positive number of the field's unit.",
+        ),
+        case(
+            "a significance of one",
+            |s| s.study("kind = \"gravity\"", "contacts = { significance = 1.0 }"),
+            "salband: study.toml, line 16: contacts.significance: found 1; wanted a number above 0 and below 1: the chance that noise alone gives a layer any contact.",
+        ),
+        case(
+            "no height in the list",
+            |s| s.study("kind = \"gravity\"", "heights = []"),
+            "salband: study.toml: heights: found an empty list; wanted at least one height in metres. To mend it: take the key out to have heights tied to the depths of the slices.",
+        ),
+        case(
+            "heights beside matching",
+            |s| {
+                let text = STUDY.replace("kind = \"gravity\"", "heights = [0.0]");
+                s.file("study.toml", &text.replace("[test]", "[test]\nresolution = \"matched\""));
+            },
+            "salband: study.toml: potential \"gravity\": found heights beside test.resolution = \"matched\"; wanted one of them, since matching finds the height of each slice. To mend it: take heights out, or write resolution = \"as-is\".",
+        ),
+        case(
+            "an unknown way with resolution",
+            |s| s.study("[test]", "[test]\nresolution = \"equal\""),
+            "salband: study.toml, line 19: test.resolution: found \"equal\"; wanted one of: as-is, matched.",
+        ),
+        case(
+            "a height that does not grow with depth",
+            |s| s.study("[test]", "[test]\nheight_per_depth = 0.0"),
+            "salband: study.toml, line 19: test.height_per_depth: found 0; wanted a positive number of metres up for a metre of depth.",
+        ),
+        case(
+            "units with an unknown role",
+            |s| s.study("[test]", "[[units]]\nname = \"suite\"\npath = \"suite.geojson\"\nrole = \"target\"\n\n[test]"),
+            "salband: study.toml, line 21: role: found \"target\"; wanted one of: reference, subject.",
+        ),
+        case(
+            "a filter that keeps nothing and leaves nothing out",
+            |s| {
+                s.study(
+                    "[test]",
+                    "[[lines]]\nname = \"faults\"\npath = \"f.geojson\"\nkeep = { column = \"kind\" }\n\n[test]",
+                )
+            },
+            "salband: study.toml, line 21: keep: found neither is nor not; wanted values to keep or to leave out. To mend it: write keep = { column = \"...\", is = [\"...\"] }.",
+        ),
+        case(
+            "units from a file of lines",
+            |s| {
+                let line = "{\"type\": \"LineString\", \"coordinates\": [[15.1, 50.5], [15.2, 50.4]]}";
+                s.file(
+                    "suite.geojson",
+                    &format!("{{\"type\": \"Feature\", \"properties\": {{}}, \"geometry\": {line}}}"),
+                );
+                s.study("[test]", "[[units]]\nname = \"suite\"\npath = \"suite.geojson\"\n\n[test]");
+            },
+            "salband: suite.geojson: the layer: found lines and no polygon; wanted polygons. To mend it: name the file under [[lines]] instead, or choose another layer.",
         ),
         case(
             "the same name twice",
@@ -116,7 +196,7 @@ fn cases() -> Vec<Case> {
                 let end = STUDY.find("[test]").unwrap();
                 s.file("study.toml", &format!("{}{}", &STUDY[..start], &STUDY[end..]));
             },
-            "salband: study.toml: the study: found no [[potential]] and no [[lines]]; wanted at least one reference to test the conductors against. To mend it: add a [[potential]] with name and path.",
+            "salband: study.toml: the study: found no [[potential]], no [[lines]] and no [[units]] that stay; wanted at least one reference to test the conductors against. To mend it: add a [[potential]] with name and path.",
         ),
         case(
             "a missing raster",

@@ -52,7 +52,10 @@ fn new_writes_a_study_that_checks_and_runs() {
     assert!(plan.contains("Frame: EPSG:32633, 80 rows x 80 columns of 500 m"), "{plan}");
     assert!(plan.contains("gravity                  6400 cells (100 %)"), "{plan}");
     assert!(plan.contains("displaced by up to 20 rows and 20 columns, 0.25 of the footprint's sides"), "{plan}");
-    assert!(plan.contains("a family of up to 8 tests"), "two depths x (3 distances + correlation): {plan}");
+    assert!(
+        plan.contains("a family of up to 16 tests"),
+        "two depths x two heights x (3 distances + correlation): {plan}"
+    );
     let ran = survey.salband(&["run", "fresh.toml", "--out", "out"]);
     assert!(ran.status.success(), "{}", stderr(&ran));
     assert_eq!(stderr(&ran), "", "nothing but the answer in a pipe");
@@ -172,7 +175,19 @@ fn the_study_as_understood_gives_the_same_tables() {
     let record: serde_json::Value =
         serde_json::from_slice(&std::fs::read(survey.path("first/provenance.json")).unwrap()).unwrap();
     let spelled = record["study"].as_str().unwrap();
-    for key in ["least_area", "profile", "distance_cap", "heights", "strong", "weak", "least_length", "band", "seed"] {
+    for key in [
+        "least_area",
+        "profile",
+        "distance_cap",
+        "height_per_depth",
+        "resolution",
+        "significance",
+        "strong",
+        "weak",
+        "least_length",
+        "band",
+        "seed",
+    ] {
         assert!(spelled.contains(&format!("{key} = ")), "{key} is spelled out in\n{spelled}");
     }
     survey.file("spelled.toml", spelled);

@@ -177,12 +177,52 @@ fn a_tiny_footprint_is_refused() {
     let members = Some(Array2::from_shape_fn((5, 5), |(row, col)| row == col));
     let distance = Some(Array2::from_shape_fn((5, 5), |(row, col)| row.abs_diff(col) as f64));
     let subject = Subject { footprint: footprint.clone(), members, strength: None };
-    let reference = Reference { footprint, distance, strength: None };
+    let reference = Reference { footprint, distance, strength: None, ..Reference::default() };
     let found = compare(&[subject], &[reference], &settings()).unwrap();
     assert!(found.tests.iter().all(|test| test.shifts <= 4 && test.p.is_none() && test.p_family.is_none()));
     // Three shifts of equal overlap by hand: the largest of three has p = 1/3.
     let null = ShiftNull::new(&array![[0.0, 1.0, 0.5]], &array![[9.0, 9.0, 9.0]], &array![[true, true, true]]).unwrap();
     same(null.p, 1.0 / 3.0, "the largest of three");
+}
+
+#[test]
+fn inside_an_area_is_tested_as_the_ground_within_nothing() {
+    // The same masks, told twice: distances one larger, tested within 1 instead of within 0 and within 1.5 instead of 0.5.
+    let Case { subjects, reference } = case(11, 2, 2);
+    let far = reference.distance.clone().unwrap();
+    let area = Reference { area: true, ..reference.clone() };
+    let settings = Settings { within: vec![0.5], ..settings() };
+    let found = compare(&subjects, &[area], &settings).unwrap();
+    let lifted = Reference { distance: Some(far + 1.0), ..reference };
+    let lifted_settings = Settings { within: vec![1.0, 1.5], distance_cap: CAP + 1.0, ..settings };
+    let expected = compare(&subjects, &[lifted], &lifted_settings).unwrap();
+    assert_eq!(found.family_tests, expected.family_tests);
+    let mut inside = 0;
+    for (found, expected) in found.tests.iter().zip(&expected.tests) {
+        if let (Some(a), Some(b)) = (found.measure.within(), expected.measure.within()) {
+            same(a, b - 1.0, "the distance");
+            inside += usize::from(a == 0.0);
+        }
+        assert_eq!(found.p, expected.p);
+        assert_eq!(found.p_family, expected.p_family);
+        same(found.score, expected.score, "score");
+    }
+    assert_eq!(inside, 2);
+}
+
+#[test]
+fn a_reference_meets_only_the_subjects_that_it_is_given() {
+    let Case { subjects, reference } = case(12, 0, 3);
+    let some = Reference { against: Some(vec![2]), ..reference.clone() };
+    let found = compare(&subjects, &[some.clone(), reference.clone()], &settings()).unwrap();
+    let every = compare(&subjects, std::slice::from_ref(&reference), &settings()).unwrap();
+    let alone = compare(&subjects[2..], std::slice::from_ref(&reference), &settings()).unwrap();
+    let of_first: Vec<_> = found.tests.iter().filter(|test| test.reference == 0).collect();
+    assert!(of_first.iter().all(|test| test.subject == 2) && of_first.len() == alone.tests.len());
+    assert_eq!(found.tests.len(), every.tests.len() + alone.tests.len());
+    for (one, other) in of_first.iter().zip(&alone.tests) {
+        assert_eq!((one.p, one.observed.to_bits()), (other.p, other.observed.to_bits()));
+    }
 }
 
 /// Transposes every array of a subject and a reference.
@@ -197,6 +237,7 @@ fn transposed(subject: &Subject, reference: &Reference) -> (Subject, Reference) 
         footprint: reference.footprint.t().to_owned(),
         distance: turn(&reference.distance),
         strength: turn(&reference.strength),
+        ..Reference::default()
     };
     (subject, reference)
 }
@@ -312,7 +353,8 @@ fn a_poor_layer_does_not_silence_the_others() {
         .collect();
     let corner = Array2::from_shape_fn((side, side), |(row, col)| row < 40 && col < 40);
     let poor = Subject { footprint: corner, ..slices[0].clone() };
-    let reference = Reference { footprint: full, distance: Some(distance.clone()), strength: None };
+    let reference =
+        Reference { footprint: full, distance: Some(distance.clone()), strength: None, ..Reference::default() };
     let settings = Settings { within: vec![2.0], profile: vec![], distance_cap: 8.0, level: 0.05 };
     let alone = compare(&slices, std::slice::from_ref(&reference), &settings).unwrap();
     let beside = compare(&[slices, vec![poor]].concat(), &[reference], &settings).unwrap();

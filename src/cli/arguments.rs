@@ -35,6 +35,8 @@ pub(super) enum Command {
         #[arg(long)]
         crs: Option<String>,
     },
+    /// Derive one product of one raster: a derivative, a continuation, a reduction; alone it lists them all
+    Derive(Derive),
     /// Check a study and print the plan: frame, resampling, tests, cost
     Check {
         /// The study file
@@ -63,6 +65,43 @@ pub(super) struct Output {
 }
 
 #[derive(Debug, Args)]
+pub(super) struct Derive {
+    /// The transform; leave everything out to see them all
+    #[arg(requires = "raster")]
+    pub transform: Option<String>,
+    /// The raster
+    #[arg(requires = "out")]
+    pub raster: Option<PathBuf>,
+    /// The GeoTIFF to write; made whole or not at all
+    #[arg(long, value_name = "FILE")]
+    pub out: Option<PathBuf>,
+    /// A parameter of the transform, such as height=1000; may be given again
+    #[arg(long, value_name = "NAME=NUMBER")]
+    pub with: Vec<String>,
+    /// The band, counted from 1
+    #[arg(long, value_name = "N", default_value_t = 1)]
+    pub band: usize,
+    /// The variable, for files that hold several
+    #[arg(long)]
+    pub variable: Option<String>,
+    /// Coordinate system, if the file has none
+    #[arg(long)]
+    pub crs: Option<String>,
+    /// Unit of the raster's values, such as mGal or nT [default: as the file states]
+    #[arg(long)]
+    pub unit: Option<String>,
+    /// A projected system to place the raster on first [default: its own]
+    #[arg(long, value_name = "CRS")]
+    pub onto: Option<String>,
+    /// Side of a cell to place the raster on, m [default: its own]
+    #[arg(long, value_name = "METRES")]
+    pub cell: Option<f64>,
+    /// Replace the file if it exists
+    #[arg(long)]
+    pub replace: bool,
+}
+
+#[derive(Debug, Args)]
 pub(super) struct NewStudy {
     /// The study file to write
     pub study: PathBuf,
@@ -78,6 +117,9 @@ pub(super) struct NewStudy {
     /// Vector files with mapped lines
     #[arg(long, value_name = "FILE", num_args = 1..)]
     pub lines: Vec<PathBuf>,
+    /// Vector files with mapped units (polygons)
+    #[arg(long, value_name = "FILE", num_args = 1..)]
+    pub units: Vec<PathBuf>,
     /// A table of known deposits (CSV)
     #[arg(long, value_name = "FILE")]
     pub deposits: Option<PathBuf>,

@@ -5,7 +5,7 @@ use std::path::{Path, PathBuf};
 
 use super::arguments::{Arguments, Command, Output};
 use super::progress::Bars;
-use super::{inspect, new};
+use super::{derive, inspect, new};
 use crate::error::{Error, Result};
 use crate::study::{Plan, RunOptions, Study, run_and_publish};
 
@@ -14,6 +14,7 @@ pub(super) fn run(arguments: Arguments) -> Result<()> {
         Command::Demo { grids, output } => execute(&demo_study(grids)?, &output),
         Command::New(choice) => new::write(&choice),
         Command::Inspect { file, variable, crs } => inspect::print(&file, variable, crs),
+        Command::Derive(choice) => derive::run(choice),
         Command::Check { study } => {
             let plan = Plan::make(Study::read(&study)?)?;
             say(&format!("{}\n{}", plan.describe(), plan.describe_footprints()?))

@@ -2,6 +2,7 @@
 
 mod arguments;
 mod commands;
+mod derive;
 mod inspect;
 mod new;
 mod progress;

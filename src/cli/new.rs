@@ -19,6 +19,7 @@ pub(super) fn write(choice: &NewStudy) -> Result<()> {
         gravity: choice.gravity.clone(),
         magnetic: choice.magnetic.clone(),
         lines: choice.lines.clone(),
+        units: choice.units.clone(),
         deposits: choice.deposits.clone(),
     })?;
     std::fs::write(&choice.study, text).map_err(|source| {

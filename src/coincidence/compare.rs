@@ -64,14 +64,18 @@ pub fn compare(subjects: &[Subject], references: &[Reference], settings: &Settin
     let mut tests = Vec::new();
     for (index, reference) in references.iter().enumerate() {
         let fixed = engine.fix(reference);
-        let shared: Vec<Shared> = groups.par_iter().map(|footprint| engine.share(footprint, &fixed)).collect();
+        let met = |group: usize| (0..subjects.len()).any(|number| group_of[number] == group && reference.meets(number));
+        let shared: Vec<Option<Shared>> = (groups.par_iter().enumerate())
+            .map(|(group, footprint)| met(group).then(|| engine.share(footprint, &fixed)))
+            .collect();
         let results: Vec<Vec<(Test, Option<ShiftNull>)>> = subjects
             .par_iter()
             .enumerate()
+            .filter(|(number, _)| reference.meets(*number))
             .map(|(number, subject)| {
-                let shared = &shared[group_of[number]];
                 let place = Place { subject: number, reference: index };
-                engine.measure(place, subject, trends[number].as_ref(), &fixed, shared)
+                let measure = |shared| engine.measure(place, subject, trends[number].as_ref(), &fixed, shared);
+                shared[group_of[number]].as_ref().map(measure).unwrap_or_default()
             })
             .collect();
         for (test, null) in results.into_iter().flatten() {
@@ -107,7 +111,13 @@ fn without_room(subjects: &[Subject], references: &[Reference], settings: &Setti
                 let verdict = Verdict::CannotTell(Refusal::NoRoom { cells: 0 });
                 tests.push(Test { verdict, ..Test::blank(place, measure, true) });
             };
+            if !reference.meets(number) {
+                continue;
+            }
             if subject.members.is_some() && reference.distance.is_some() {
+                if reference.area {
+                    refuse(Measure::Enrichment { within: 0.0 });
+                }
                 settings.within.iter().for_each(|within| refuse(Measure::Enrichment { within: *within }));
                 refuse(Measure::MeanDistance);
             }

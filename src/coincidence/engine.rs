@@ -66,9 +66,12 @@ impl Engine<'_> {
         self.correlator.spectrum(|row, col| if inside[[row, col]] { change(values[[row, col]]) } else { 0.0 })
     }
 
-    fn distances(&self) -> impl Iterator<Item = (f64, bool)> {
+    /// The distances of a reference and whether each is tested; inside an area comes first, as 0.
+    fn distances(&self, reference: &Reference) -> impl Iterator<Item = (f64, bool)> {
+        let inside = reference.area.then_some((0.0, true));
         let profile = self.settings.profile.iter().filter(|distance| !self.settings.within.contains(distance));
-        self.settings.within.iter().map(|distance| (*distance, true)).chain(profile.map(|distance| (*distance, false)))
+        let within = self.settings.within.iter().map(|distance| (*distance, true));
+        inside.into_iter().chain(within).chain(profile.map(|distance| (*distance, false)))
     }
 
     pub fn fix<'a>(&self, layer: &'a Reference) -> Fixed<'a> {
@@ -76,7 +79,7 @@ impl Engine<'_> {
         let inside = self.window.cut(&layer.footprint);
         let masks = match &layer.distance {
             Some(distance) => {
-                let ladder: Vec<f64> = self.distances().map(|(within, _)| within).collect();
+                let ladder: Vec<f64> = self.distances(layer).map(|(within, _)| within).collect();
                 let far = self.window.cut(distance);
                 self.correlator.masks(1 + ladder.len(), |mask, row, col| {
                     inside[[row, col]] && (mask == 0 || far[[row, col]] <= ladder[mask - 1])
@@ -162,7 +165,7 @@ impl Engine<'_> {
             footprint_cells: cells as usize,
             ..Test::blank(place, measure, tested)
         };
-        let ladder: Vec<(f64, bool)> = self.distances().collect();
+        let ladder: Vec<(f64, bool)> = self.distances(fixed.layer).collect();
         let enriched = ladder.par_iter().zip(&hits).zip(&shared.near).map(|(((within, tested), hits), ground)| {
             let mut test = blank(Measure::Enrichment { within: *within }, *tested);
             test.subject_share = hits[zero] / own;

@@ -17,7 +17,7 @@ pub struct Subject {
 }
 
 /// The pattern that stays in place.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Default)]
 pub struct Reference {
     /// The cells where the layer has data.
     pub footprint: Array2<bool>,
@@ -25,6 +25,18 @@ pub struct Reference {
     pub distance: Option<Array2<f64>>,
     /// A number in each cell of the footprint (gradient strength, for example), for the correlation.
     pub strength: Option<Array2<f64>>,
+    /// True if the reference is ground (mapped units, for example) and a distance of 0 means inside it: being inside is
+    /// then tested as well, as enrichment within 0.
+    pub area: bool,
+    /// The subjects that are compared with it, by index; `None` for all.
+    pub against: Option<Vec<usize>>,
+}
+
+impl Reference {
+    /// True if a subject is compared with it.
+    pub(super) fn meets(&self, subject: usize) -> bool {
+        self.against.as_ref().is_none_or(|subjects| subjects.contains(&subject))
+    }
 }
 
 /// What is asked of every pair of subject and reference.
@@ -107,6 +119,11 @@ pub(super) fn check_layers(subjects: &[Subject], references: &[Reference]) -> Re
         same(&format!("reference {index}"), reference.footprint.dim())?;
         numbers(format!("the distances of reference {index}"), &reference.footprint, &reference.distance)?;
         numbers(format!("the strength of reference {index}"), &reference.footprint, &reference.strength)?;
+        if let Some(missing) = reference.against.iter().flatten().find(|subject| **subject >= subjects.len()) {
+            return Err(Error::input(format!("the subjects of reference {index}"))
+                .found(format!("number {missing}"))
+                .wanted(format!("numbers below {}, which counts the subjects", subjects.len())));
+        }
     }
     Ok(shape)
 }
@@ -136,7 +153,7 @@ mod tests {
     #[test]
     fn each_bad_layer_is_refused() {
         let subject = || Subject { footprint: Array2::from_elem((3, 4), true), members: None, strength: None };
-        let reference = || Reference { footprint: Array2::from_elem((3, 4), true), distance: None, strength: None };
+        let reference = || Reference { footprint: Array2::from_elem((3, 4), true), ..Reference::default() };
         assert_eq!(check_layers(&[subject()], &[reference()]).unwrap(), (3, 4));
         assert!(check_layers(&[], &[reference()]).is_err());
         assert!(check_layers(&[subject()], &[]).is_err());
@@ -152,6 +169,7 @@ mod tests {
         assert!(found.contains("(1, 2)"), "{found}");
         let mut footprint = Array2::from_elem((3, 4), true);
         footprint[[1, 2]] = false;
-        assert!(check_layers(&[subject()], &[Reference { footprint, strength: Some(holed), distance: None }]).is_ok());
+        assert!(check_layers(&[subject()], &[Reference { footprint, strength: Some(holed), ..reference() }]).is_ok());
+        assert!(message(subject(), Reference { against: Some(vec![0, 1]), ..reference() }).contains("number 1"));
     }
 }

@@ -13,7 +13,7 @@
 //! let members = Array2::from_shape_fn(shape, |(row, col)| phase(row, col) == 0);
 //! let distance = Array2::from_shape_fn(shape, |(row, col)| phase(row, col).min(8 - phase(row, col)) as f64);
 //! let subject = Subject { footprint: footprint.clone(), members: Some(members), strength: None };
-//! let reference = Reference { footprint, distance: Some(distance), strength: None };
+//! let reference = Reference { footprint, distance: Some(distance), strength: None, ..Reference::default() };
 //! let settings = Settings { within: vec![1.0], profile: vec![], distance_cap: 8.0, level: 0.05 };
 //! let comparison = compare(&[subject], &[reference], &settings)?;
 //! assert!((comparison.tests[0].observed - 8.0 / 3.0).abs() < 0.05);

@@ -50,16 +50,19 @@ pub struct CrestPoint {
 /// # Errors
 /// Only a defect in the shapes of the gradient.
 pub fn crest_points(gradient: &Gradient) -> Result<Vec<CrestPoint>> {
-    let strength = gradient.horizontal();
+    Ok(points(&gradient.horizontal()))
+}
+
+/// As [`crest_points`], of the magnitude itself.
+pub(super) fn points(strength: &Array2<f64>) -> Vec<CrestPoint> {
     let largest = strength.iter().copied().filter(|value| value.is_finite()).fold(0.0, f64::max);
     let (rows, cols) = strength.dim();
-    Ok((1..rows.saturating_sub(1))
+    (1..rows.saturating_sub(1))
         .into_par_iter()
         .flat_map_iter(|row| {
-            let strength = &strength;
             (1..cols.saturating_sub(1)).filter_map(move |col| crest_at(strength, row, col, RISE * largest))
         })
-        .collect())
+        .collect()
 }
 
 /// The crest in one cell.

@@ -4,7 +4,8 @@ use geo::{Coord, LineString};
 
 use super::crest::CrestPoint;
 use super::trace::Chain;
-use crate::field::Gradient;
+use crate::field::{Gradient, GradientNoise};
+use crate::quantile::quantile;
 
 /// One contact.
 #[derive(Debug, Clone, PartialEq)]
@@ -24,6 +25,36 @@ pub struct Contact {
     pub dense_side_deg: f64,
     /// True for a closed line.
     pub closed: bool,
+    /// Where the noise is known, what it says of the line.
+    pub significance: Option<Significance>,
+}
+
+/// How far a contact stands above the noise of its layer. Strengths are those at the centres of its cells, since the top of
+/// a fitted parabola lies above the values that the noise is known for.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Significance {
+    /// Median strength along the line over the standard deviation of a gradient component; infinite without noise.
+    pub signal_to_noise: f64,
+    /// log10 of the chance that noise alone reaches the strongest crest of the line in a given cell.
+    pub log10_p_strongest: f64,
+    /// The same for the median crest of the line.
+    pub log10_p_median: f64,
+    /// log10 of a bound on the chance that noise alone reaches the strongest crest anywhere in the layer; at most 0.
+    pub log10_p_layer: f64,
+}
+
+impl Significance {
+    /// From the strengths in the cells along a line of a layer of `cells` cells; `None` without any.
+    pub(super) fn of(strengths: Vec<f64>, noise: &GradientNoise, cells: usize) -> Option<Self> {
+        let strongest = strengths.iter().copied().fold(0.0, f64::max);
+        let median = quantile(strengths, 0.5)?;
+        Some(Self {
+            signal_to_noise: if noise.component() > 0.0 { median / noise.component() } else { f64::INFINITY },
+            log10_p_strongest: noise.log10_p(strongest),
+            log10_p_median: noise.log10_p(median),
+            log10_p_layer: noise.log10_p_layer(strongest, cells),
+        })
+    }
 }
 
 impl Contact {
@@ -32,7 +63,7 @@ impl Contact {
         if chain.points.len() < 2 {
             return None;
         }
-        let points: Vec<&CrestPoint> = chain.points.iter().map(|at| &crests[*at]).collect();
+        let points: Vec<&CrestPoint> = chain.points.iter().map(|at| &crests[*at as usize]).collect();
         let placed: Vec<Coord<f64>> =
             points.iter().map(|point| gradient.frame().position(point.row, point.col).into()).collect();
         let mut places = smoothed(&placed, chain.closed);
@@ -76,6 +107,7 @@ impl Contact {
             mean_strength: points.iter().map(|point| point.strength).sum::<f64>() / points.len() as f64,
             dense_side_deg: if chain.closed { f64::NAN } else { normal % 360.0 },
             closed: chain.closed,
+            significance: None,
         })
     }
 

@@ -1,18 +1,29 @@
 //! Contacts: lines along the crest of a potential field's horizontal gradient, the margins of dense or magnetic bodies.
 
 mod crest;
+mod depth;
+mod drift;
+mod ladder;
+mod limits;
 mod line;
+mod prominence;
 mod settings;
 mod thin;
 mod trace;
 
 pub use crest::{CrestPoint, crest_points};
-pub use line::{Contact, compass_point};
+pub use depth::{DepthEstimate, tilt_depth};
+pub use drift::{DipSide, Drift};
+pub use ladder::{Face, Ladder, Level, Persistence};
+pub use line::{Contact, Significance, compass_point};
 pub use settings::ContactSettings;
 
+use limits::Limits;
+use rayon::prelude::*;
+
 use crate::error::Result;
-use crate::field::Gradient;
-use crate::quantile::quantile;
+use crate::field::{Gradient, GradientNoise};
+use crate::quantile::quantile_in_place;
 
 /// A line is followed down to this share below the weak quantile, so that a contact of even strength, whose crests differ
 /// only by how the cells sample it, is not cut to pieces by its own quantile.
@@ -45,16 +56,69 @@ const SLACK: f64 = 0.1;
 /// # Ok::<(), salband::Error>(())
 /// ```
 pub fn find_contacts(gradient: &Gradient, settings: &ContactSettings) -> Result<Vec<Contact>> {
-    let crests = crest_points(gradient)?;
-    let strengths: Vec<f64> = crests.iter().map(|crest| crest.strength).collect();
-    let (Some(weak), Some(strong)) =
-        (quantile(strengths.clone(), settings.weak()), quantile(strengths, settings.strong()))
-    else {
+    linked(gradient, settings, None)
+}
+
+/// As [`find_contacts`], but only of what stands above the noise of the layer: a line must hold at least one crest that
+/// noise alone would reach *anywhere* in the layer with a chance of at most the significance of the settings
+/// ([`GradientNoise::layer_bound`] over the cells of the footprint), and it is followed while each crest is significant in
+/// its own cell at the same level ([`GradientNoise::pointwise_bound`]). The quantiles of the settings hold as well;
+/// [`ContactSettings::above_noise`] sets none. Each contact gets its [`Significance`].
+///
+/// A crest must also stand out from its flanks: followed up and down the slope, the magnitude must fall by the square root of
+/// two times the pointwise bound on both sides before it rises (by more than the square root of two times the deviation
+/// of the noise, along a line; at all, where it starts). Without that, every bump of noise on the flank of a strong contact,
+/// where the gradient is far from zero, would be a line.
+///
+/// A line may run to the edge of the frame but not start within two cells plus the height of it, where the padding of the
+/// transform makes the noise of the gradient larger. The noise must be that of this gradient: of the same product at the
+/// same height; for pseudo-gravity with [`GradientNoise::near_edges`]. A layer without noise loses nothing.
+///
+/// # Errors
+/// As [`find_contacts`].
+pub fn find_contacts_above_noise(
+    gradient: &Gradient,
+    noise: &GradientNoise,
+    settings: &ContactSettings,
+) -> Result<Vec<Contact>> {
+    linked(gradient, settings, Some(noise))
+}
+
+fn linked(gradient: &Gradient, settings: &ContactSettings, noise: Option<&GradientNoise>) -> Result<Vec<Contact>> {
+    let strength = gradient.horizontal();
+    let crests = crest::points(&strength);
+    let mut strengths: Vec<f64> = crests.iter().map(|crest| crest.strength).collect();
+    let mut at = |share| quantile_in_place(&mut strengths, share);
+    let (Some(weak), Some(strong)) = (at(settings.weak()), at(settings.strong())) else {
         return Ok(Vec::new());
     };
-    let mut contacts: Vec<Contact> = trace::chains(gradient.frame().shape(), &crests, (1.0 - SLACK) * weak, strong)
-        .into_iter()
-        .filter_map(|chain| Contact::along(&chain, &crests, gradient))
+    drop(strengths);
+    let cells = strength.iter().filter(|value| value.is_finite()).count();
+    let limits = noise.map(|noise| Limits::new(noise, settings.significance(), cells));
+    let follows = |crest: &CrestPoint| {
+        crest.strength >= (1.0 - SLACK) * weak
+            && limits.as_ref().is_none_or(|limits| limits.follow(gradient, &strength, crest.cell))
+    };
+    let starts = |crest: &CrestPoint| {
+        crest.strength >= strong && limits.as_ref().is_none_or(|limits| limits.start(gradient, &strength, crest.cell))
+    };
+    let mut contacts: Vec<Contact> = trace::chains(strength.dim(), &crests, follows, starts)
+        .into_par_iter()
+        .filter_map(|chain| {
+            let mut contact = Contact::along(&chain, &crests, gradient)?;
+            contact.significance = noise.and_then(|noise| {
+                let along = chain
+                    .points
+                    .iter()
+                    .map(|at| {
+                        let cell = crests[*at as usize].cell;
+                        strength[cell] / noise.growth(strength.dim(), cell)
+                    })
+                    .collect();
+                Significance::of(along, noise, cells)
+            });
+            Some(contact)
+        })
         .filter(|contact| contact.length_m >= settings.least_length())
         .collect();
     contacts.sort_by(|a, b| {

@@ -8,6 +8,7 @@ pub struct ContactSettings {
     strong: f64,
     weak: f64,
     least_length: f64,
+    significance: f64,
 }
 
 impl ContactSettings {
@@ -37,7 +38,31 @@ impl ContactSettings {
                 .wanted("zero or a positive number of metres")
                 .mend("a few cells is a usual choice"));
         }
-        Ok(Self { strong, weak, least_length })
+        Ok(Self { strong, weak, least_length, ..Self::default() })
+    }
+
+    /// No quantiles: all crests that stand above the noise count, for [`super::find_contacts_above_noise`]. `least_length`
+    /// is in metres.
+    ///
+    /// # Errors
+    /// A length that is negative or not finite.
+    pub fn above_noise(least_length: f64) -> Result<Self> {
+        Self::new(0.0, 0.0, least_length)
+    }
+
+    /// With another significance: the largest chance that noise alone gives a layer any line at all, 0.05 unless set here.
+    /// It has an effect only where the noise is known.
+    ///
+    /// # Errors
+    /// A number that is not above 0 and at most 0.5.
+    pub fn with_significance(self, level: f64) -> Result<Self> {
+        if !(level > 0.0 && level <= 0.5) {
+            return Err(Error::input("the significance of contacts")
+                .found(level)
+                .wanted("a chance above 0 and at most 0.5")
+                .mend("0.05 is the default"));
+        }
+        Ok(Self { significance: level, ..self })
     }
 
     /// The upper quantile of crest strengths.
@@ -54,12 +79,17 @@ impl ContactSettings {
     pub fn least_length(&self) -> f64 {
         self.least_length
     }
+
+    /// The largest chance that noise alone gives a layer any line.
+    pub fn significance(&self) -> f64 {
+        self.significance
+    }
 }
 
 impl Default for ContactSettings {
-    /// Strong 0.6, weak 0.3, no least length.
+    /// Strong 0.6, weak 0.3, no least length, significance 0.05.
     fn default() -> Self {
-        Self { strong: 0.6, weak: 0.3, least_length: 0.0 }
+        Self { strong: 0.6, weak: 0.3, least_length: 0.0, significance: 0.05 }
     }
 }
 
@@ -78,6 +108,20 @@ mod tests {
         for length in [f64::NAN, f64::INFINITY, -1.0] {
             assert!(refused(0.6, 0.3, length).contains("least length"));
         }
+    }
+
+    #[test]
+    fn each_bad_significance_is_refused() {
+        for level in [f64::NAN, f64::INFINITY, -0.1, 0.0, 0.51] {
+            let error = ContactSettings::default().with_significance(level).unwrap_err();
+            assert!(error.to_string().contains("the significance of contacts"), "{level}");
+        }
+        let strict = ContactSettings::above_noise(500.0).unwrap().with_significance(0.01).unwrap();
+        assert_eq!(
+            (strict.significance(), strict.strong(), strict.weak(), strict.least_length()),
+            (0.01, 0.0, 0.0, 500.0)
+        );
+        assert!(ContactSettings::above_noise(f64::NAN).is_err());
     }
 
     #[test]

@@ -13,33 +13,37 @@ pub(super) fn set_around(cells: &Array2<bool>, (row, col): (usize, usize)) -> [b
     })
 }
 
-/// The neighbours of a cell that are set, in the order of [`AROUND`].
-pub(super) fn neighbours(cells: &Array2<bool>, (row, col): (usize, usize)) -> Vec<(usize, usize)> {
-    let around = set_around(cells, (row, col));
-    let step = |(down, across)| (row.wrapping_add_signed(down), col.wrapping_add_signed(across));
-    AROUND.into_iter().zip(around).filter(|(_, set)| *set).map(|(by, _)| step(by)).collect()
+/// The cell a step away in one of the directions of [`AROUND`].
+pub(super) fn beside((row, col): (usize, usize), way: usize) -> (usize, usize) {
+    let (down, across) = AROUND[way];
+    (row.wrapping_add_signed(down), col.wrapping_add_signed(across))
+}
+
+/// How many neighbours of a cell are set.
+pub(super) fn count_around(cells: &Array2<bool>, cell: (usize, usize)) -> usize {
+    set_around(cells, cell).into_iter().filter(|set| *set).count()
 }
 
 /// Clears cells, the weakest first, as long as that neither breaks nor shortens a chain, until nothing changes.
 ///
-/// `ordered` lists the set cells from the weakest to the strongest. A cell may go if it is simple (clearing it changes
-/// neither the number of 8-connected pieces nor of the holes between them) and is not the end of a chain. What is left is
-/// one cell wide and keeps to the strongest cells.
+/// `ordered` lists the set cells, by their place in row order, from the weakest to the strongest; those cleared are taken
+/// out of it. A cell may go if it is simple (clearing it changes neither the number of 8-connected pieces nor of the
+/// holes between them) and is not the end of a chain. What is left is one cell wide and keeps to the strongest cells.
 ///
 /// Source: ordered homotopic thinning; the crossing number of Hilditch (1969) decides whether a cell is simple.
-pub(super) fn thin(cells: &mut Array2<bool>, ordered: &[(usize, usize)]) {
+pub(super) fn thin(cells: &mut Array2<bool>, ordered: &mut Vec<u32>) {
+    let cols = cells.ncols();
     loop {
-        let mut changed = false;
-        for &cell in ordered {
+        let before = ordered.len();
+        ordered.retain(|&place| {
+            let cell = (place as usize / cols, place as usize % cols);
             if cells[cell] {
                 let around = set_around(cells, cell);
-                if !is_end(around) && is_simple(around) {
-                    cells[cell] = false;
-                    changed = true;
-                }
+                cells[cell] = is_end(around) || !is_simple(around);
             }
-        }
-        if !changed {
+            cells[cell]
+        });
+        if ordered.len() == before {
             return;
         }
     }
@@ -69,8 +73,8 @@ mod tests {
 
     fn thinned(lines: &[&str]) -> Array2<bool> {
         let mut cells = drawn(lines);
-        let ordered: Vec<_> = cells.indexed_iter().filter(|(_, set)| **set).map(|(cell, _)| cell).collect();
-        thin(&mut cells, &ordered);
+        let mut ordered: Vec<u32> = (0..).zip(&cells).filter(|(_, set)| **set).map(|(place, _)| place).collect();
+        thin(&mut cells, &mut ordered);
         cells
     }
 
@@ -78,7 +82,7 @@ mod tests {
     fn a_staircase_becomes_a_diagonal() {
         let cells = thinned(&["##....", ".##...", "..##..", "...##."]);
         assert!(cells.iter().filter(|set| **set).count() <= 5, "{cells}");
-        let ends = cells.indexed_iter().filter(|(cell, set)| **set && neighbours(&cells, *cell).len() == 1).count();
+        let ends = cells.indexed_iter().filter(|(cell, set)| **set && count_around(&cells, *cell) == 1).count();
         assert_eq!(ends, 2);
     }
 
@@ -94,7 +98,7 @@ mod tests {
     #[test]
     fn a_ring_stays_a_ring_and_a_line_stays_whole() {
         let ring = thinned(&["......", ".####.", ".#..#.", ".####.", "......"]);
-        assert!(ring.indexed_iter().all(|(cell, set)| !*set || neighbours(&ring, cell).len() == 2), "{ring}");
+        assert!(ring.indexed_iter().all(|(cell, set)| !*set || count_around(&ring, cell) == 2), "{ring}");
         assert!(ring.iter().any(|set| *set));
         let line = ["......", ".####.", "......"];
         assert_eq!(thinned(&line), drawn(&line));

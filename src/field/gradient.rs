@@ -2,6 +2,7 @@
 
 use ndarray::{Array2, Zip};
 
+use super::SecondDerivatives;
 use crate::error::{Error, Result};
 use crate::grid::Frame;
 
@@ -83,6 +84,42 @@ impl Gradient {
     /// Source: Wijns, Perez & Kowalczyk (2005), Geophysics 70, L39-L43.
     pub fn theta(&self) -> Array2<f64> {
         self.horizontal() / self.total()
+    }
+
+    /// The horizontal gradient magnitude of the tilt angle, radians per metre: a crest over a margin, of height 1 / depth
+    /// over a vertical contact, whatever its contrast. NaN where the horizontal gradient vanishes, as the tilt has a kink
+    /// there.
+    ///
+    /// `second` holds the second derivatives of the same field at the same height. With h the horizontal gradient
+    /// magnitude and d the derivative downward, the slope of tilt is (h grad d - d grad h) / (h^2 + d^2), and grad h comes
+    /// from the second derivatives, so that no difference between cells is taken.
+    ///
+    /// Source: Verduzco, Fairhead, Green & MacKenzie (2004), The Leading Edge 23, 116-119.
+    ///
+    /// # Errors
+    /// When the second derivatives stand on another frame.
+    pub fn tilt_gradient(&self, second: &SecondDerivatives) -> Result<Array2<f64>> {
+        if second.frame() != &self.frame {
+            return Err(Error::ours("the gradient of the tilt")
+                .found(format!("second derivatives of {:?} cells on another frame", second.frame().shape()))
+                .wanted(format!("those of the same field, {:?} cells", self.frame.shape())));
+        }
+        let mut slope = Array2::from_elem(self.frame.shape(), f64::NAN);
+        Zip::indexed(&mut slope).par_for_each(|cell, slope| {
+            let (east, north, down) = (self.east[cell], self.north[cell], self.down[cell]);
+            let level = east.hypot(north);
+            if level > 0.0 {
+                let across = |along: f64, other: f64, toward_down: f64| {
+                    let change = (east * along + north * other) / level;
+                    (level * toward_down - down * change) / (level * level + down * down)
+                };
+                let mixed = second.east_north()[cell];
+                let toward_east = across(second.east_east()[cell], mixed, second.east_down()[cell]);
+                let toward_north = across(mixed, second.north_north()[cell], second.north_down()[cell]);
+                *slope = toward_east.hypot(toward_north);
+            }
+        });
+        Ok(slope)
     }
 }
 

@@ -1,137 +1,170 @@
-//! Reduction to the pole and pseudo-gravity of total-field magnetic anomalies.
+//! Reduction to the pole and to the equator, magnetic potential and pseudo-gravity of total-field anomalies.
 
 use rustfft::num_complex::Complex64;
 
+use super::PreparedField;
+use super::check::checked_positive;
+use super::direction::{Direction, MagneticDirections};
 use super::spectrum::Wave;
 use crate::error::{Error, Result};
+use crate::grid::Plane;
 
-/// The direction of the inducing field, along which the bodies are taken to be magnetised.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct InducingField {
-    /// Direction cosines toward east, north and down.
-    east: f64,
-    north: f64,
-    down: f64,
-}
-
-impl InducingField {
-    /// The least inclination, degrees up or down, at which a reduction is made. Below it the operator magnifies waves
-    /// along the magnetic declination by more than 1 / sin^2 15 = 15, and noise takes over.
-    pub const LEAST_INCLINATION: f64 = 15.0;
-
-    /// A direction by its inclination (degrees, positive downward, -90 to 90) and declination (degrees clockwise from
-    /// grid north, -360 to 360).
-    ///
-    /// # Errors
-    /// An angle outside its range or not a number; an inclination less steep than [`Self::LEAST_INCLINATION`].
-    pub fn new(inclination: f64, declination: f64) -> Result<Self> {
-        if !(-90.0..=90.0).contains(&inclination) {
-            return Err(Error::input("the inclination of the magnetic field")
-                .found(inclination)
-                .wanted("degrees between -90 and 90, positive downward")
-                .mend("take it from a geomagnetic reference model for the place and date of the survey"));
-        }
-        if !(-360.0..=360.0).contains(&declination) {
-            return Err(Error::input("the declination of the magnetic field")
-                .found(declination)
-                .wanted("degrees between -360 and 360, clockwise from grid north")
-                .mend("take it from a geomagnetic reference model for the place and date of the survey"));
-        }
-        if inclination.abs() < Self::LEAST_INCLINATION {
-            return Err(Error::input("the inclination of the magnetic field")
-                .found(format!("{inclination} degrees"))
-                .wanted(format!(
-                    "at least {} degrees up or down, because reduction to the pole is unstable at low latitudes",
-                    Self::LEAST_INCLINATION
-                ))
-                .mend("leave this layer out, or give it as a grid that is already reduced, with kind \"other\""));
-        }
-        let (dip, bearing) = (inclination.to_radians(), declination.to_radians());
-        Ok(Self { east: dip.cos() * bearing.sin(), north: dip.cos() * bearing.cos(), down: dip.sin() })
-    }
-
-    /// 1 / Theta^2 with Theta = down + i (east k_east + north k_north) / |k|; 1 for the level.
-    ///
-    /// Source: Blakely (1995), Potential Theory in Gravity and Magnetic Applications, section 12.3.1, for magnetisation
-    /// along the field.
-    pub(super) fn to_pole(self, wave: Wave) -> Complex64 {
-        if wave.length == 0.0 {
-            return Complex64::new(1.0, 0.0);
-        }
-        let along = (self.east * wave.east + self.north * wave.north) / wave.length;
-        let theta = Complex64::new(self.down, along);
-        (theta * theta).inv()
-    }
-
-    /// mGal per nT: the reduction to the pole, integrated along the vertical (1 / |k|) and scaled by Poisson's relation;
-    /// 0 for the level, which is not defined. `ratio` is density over magnetisation, kg/m3 per A/m.
-    ///
-    /// Source: Baranov (1957), Geophysics 22, 359-382; Blakely (1995), section 12.3.2.
-    pub(super) fn to_pseudo_gravity(self, wave: Wave, ratio: f64) -> Complex64 {
-        if wave.length == 0.0 {
-            return Complex64::new(0.0, 0.0);
-        }
-        self.to_pole(wave) * (MILLIGAL_PER_NANOTESLA * ratio / wave.length)
-    }
-}
+/// The least inclination, degrees up or down, whose own amplitude is used; below it the amplitude is that of this
+/// inclination, and only the phase is exact.
+pub const LEAST_EXACT_INCLINATION: f64 = 20.0;
 
 /// Newton's constant 6.6743e-11 m3/kg/s2 (CODATA 2018) over mu0 / 4 pi = 1e-7, times 1e-9 T/nT and 1e5 mGal per m/s2.
 const MILLIGAL_PER_NANOTESLA: f64 = 6.6743e-11 / 1e-7 * 1e-9 * 1e5;
 
-/// The ratio of density to magnetisation, if it can be used.
-pub(super) fn checked_ratio(ratio: f64) -> Result<f64> {
-    if ratio.is_finite() && ratio > 0.0 {
-        return Ok(ratio);
+impl MagneticDirections {
+    /// 1 / (A_field A_magnetisation), each under the guard; 1 for the level.
+    pub(super) fn to_pole(self, wave: Wave, guard: f64) -> Complex64 {
+        if wave.length == 0.0 {
+            return Complex64::new(1.0, 0.0);
+        }
+        self.field.inverse(wave, guard) * self.magnetisation.inverse(wave, guard)
     }
-    Err(Error::input("the ratio of density to magnetisation for pseudo-gravity")
-        .found(ratio)
-        .wanted("a positive number of kg/m3 per A/m")
-        .mend("use 1 if only the shape matters"))
+
+    /// A_level^2 / (A_field A_magnetisation), with A_level that of the field's declination at inclination 0.
+    fn to_equator(self, wave: Wave) -> Complex64 {
+        if wave.length == 0.0 {
+            return Complex64::default();
+        }
+        let level = self.field.levelled().along(wave);
+        // For magnetisation along the field the ratio is at most 1, so that it needs no guard.
+        let guard = if self.field == self.magnetisation { 0.0 } else { LEAST_EXACT_INCLINATION };
+        level * level * self.field.inverse(wave, guard) * self.magnetisation.inverse(wave, guard)
+    }
 }
 
-#[cfg(test)]
-mod tests {
-    use super::*;
+/// - 1 / (|k| A_field), metres; 0 for the level, which is not defined.
+fn to_potential(field: Direction, wave: Wave) -> Complex64 {
+    if wave.length == 0.0 {
+        return Complex64::default();
+    }
+    -field.inverse(wave, LEAST_EXACT_INCLINATION) / wave.length
+}
 
-    const WAVE: Wave = Wave { east: 3e-4, north: -4e-4, length: 5e-4 };
+/// - C ratio / A_magnetisation, mGal per nT m; 0 for the level.
+fn to_gravity(magnetisation: Direction, ratio: f64, wave: Wave) -> Complex64 {
+    if wave.length == 0.0 {
+        return Complex64::default();
+    }
+    -magnetisation.inverse(wave, LEAST_EXACT_INCLINATION) * (MILLIGAL_PER_NANOTESLA * ratio)
+}
 
-    #[test]
-    fn each_bad_angle_is_refused() {
-        for inclination in [f64::NAN, f64::INFINITY, 90.1, -91.0] {
-            let error = InducingField::new(inclination, 0.0).unwrap_err().to_string();
-            assert!(error.contains("between -90 and 90"), "{error}");
-        }
-        for declination in [f64::NAN, f64::NEG_INFINITY, 360.5] {
-            let error = InducingField::new(60.0, declination).unwrap_err().to_string();
-            assert!(error.contains("declination"), "{error}");
-        }
-        for inclination in [0.0, 14.9, -14.9] {
-            let error = InducingField::new(inclination, 0.0).unwrap_err().to_string();
-            assert!(error.contains("at least 15 degrees"), "{error}");
-        }
-        assert!(InducingField::new(-15.0, 360.0).is_ok());
+impl MagneticDirections {
+    /// Pseudo-gravity from total-field anomalies, mGal per nT; 0 for the level.
+    pub(super) fn to_pseudo_gravity(self, ratio: f64, wave: Wave) -> Complex64 {
+        to_potential(self.field, wave) * to_gravity(self.magnetisation, ratio, wave)
+    }
+}
+
+/// The ratio of density to magnetisation, if it can be used.
+pub(super) fn checked_ratio(ratio: f64) -> Result<f64> {
+    checked_positive(ratio, "the ratio of density to magnetisation", "kg/m3 per A/m (1 if only the shape matters)")
+}
+
+impl PreparedField {
+    /// Total-field anomalies (nT) reduced to the pole, nT: the anomaly of the same bodies under a vertical field and
+    /// with vertical magnetisation of the same strength. The plane passes unchanged.
+    ///
+    /// Each of the two directions contributes 1 / A, A = sin I + i cos I cos(D - azimuth of the wave). Where a direction
+    /// is less steep than [`LEAST_EXACT_INCLINATION`], the amplitude of its factor is that of this steeper inclination
+    /// and its phase is kept, so that noise along the declination is not blown up without bound. The price is that waves
+    /// along the magnetic equator's blind direction come out too weak.
+    ///
+    /// Measured on a prism of 5 x 5 km, 0.8 to 3 km deep, on 128 x 128 cells of 250 m, declination 5: the root mean square
+    /// error over the interior as a share of the range of the exact answer, without noise and with white noise of 1 % of
+    /// the range of the anomaly (tests/field_magnetics.rs holds these numbers and chose the guard).
+    ///
+    /// | inclination | guard 20 | with noise | no guard | with noise |
+    /// | --- | --- | --- | --- | --- |
+    /// | 5 | 0.055 | 0.065 | 0.031 | 0.335 |
+    /// | 15 | 0.026 | 0.046 | 0.008 | 0.059 |
+    /// | 30 | 0.002 | 0.027 | 0.002 | 0.027 |
+    /// | 60 | 0.0004 | 0.015 | 0.0004 | 0.015 |
+    ///
+    /// Source: Baranov (1957), Geophysics 22, 359-382; Blakely (1995), section 12.3.1; the guard: Grant & Dodds (1972,
+    /// unpublished) as given by MacLeod, Jordan & Li (1993), Exploration Geophysics 24.
+    ///
+    /// # Errors
+    /// Only a defect of the transform.
+    pub fn to_pole(&self, directions: MagneticDirections) -> Result<Self> {
+        self.to_pole_guarded(directions, LEAST_EXACT_INCLINATION)
     }
 
-    #[test]
-    fn each_bad_ratio_is_refused() {
-        for ratio in [f64::NAN, f64::INFINITY, 0.0, -1.0] {
-            assert!(checked_ratio(ratio).unwrap_err().to_string().contains("kg/m3 per A/m"));
+    /// [`Self::to_pole`] with a guard of its own: the least inclination, degrees, whose own amplitude is used; 0 for none.
+    ///
+    /// # Errors
+    /// A guard outside 0 to 90 degrees.
+    pub fn to_pole_guarded(&self, directions: MagneticDirections, guard: f64) -> Result<Self> {
+        if !(0.0..=90.0).contains(&guard) {
+            return Err(Error::input("the guard of a reduction to the pole")
+                .found(guard)
+                .wanted("degrees from 0 (no guard) to 90")
+                .mend(format!("use {LEAST_EXACT_INCLINATION} unless the noise of the layer asks for more")));
         }
+        self.filtered(self.plane(), |wave| directions.to_pole(wave, guard))
     }
 
-    #[test]
-    fn at_the_poles_nothing_is_left_to_reduce() {
-        for inclination in [90.0, -90.0] {
-            let factor = InducingField::new(inclination, 20.0).unwrap().to_pole(WAVE);
-            assert!((factor - 1.0).norm() < 1e-12);
-        }
+    /// Total-field anomalies (nT) reduced to the equator, nT: the anomaly of the same bodies under a horizontal field of
+    /// the same declination, magnetised along it. The level and the plane are dropped.
+    ///
+    /// For induced magnetisation the operator is at most 1 and exact at every inclination. With a magnetisation of its
+    /// own the guard of [`Self::to_pole`] holds for both factors.
+    ///
+    /// Measured as there, without and with noise: 0.0012 and 0.011 at inclination 5, 0.0010 and 0.012 at 15, 0.0005 and 0.013
+    /// at 30. Below about 20 degrees it is the safer reduction.
+    ///
+    /// Source: as for [`Self::to_pole`]; MacLeod, Jordan & Li (1993) discuss its use at low latitudes.
+    ///
+    /// # Errors
+    /// Only a defect of the transform.
+    pub fn to_equator(&self, directions: MagneticDirections) -> Result<Self> {
+        self.filtered(Plane::flat(0.0), |wave| directions.to_equator(wave))
     }
 
-    #[test]
-    fn the_operator_is_the_closed_form() {
-        // Blakely (1995), section 12.3.1, by hand for I = 30, D = 90: Theta = 0.5 + i 0.8660254 x 0.6.
-        let factor = InducingField::new(30.0, 90.0).unwrap().to_pole(WAVE);
-        let theta = Complex64::new(0.5, 0.866_025_403_784_438_6 * 0.6);
-        assert!((factor * theta * theta - 1.0).norm() < 1e-12);
+    /// Total-field anomalies (nT) turned into the scalar magnetic potential V of the bodies, nT m, for which the anomalous
+    /// field is - grad V and a dipole of moment m has V = mu0 / 4 pi  m.r / r^3. `field` is the direction along which the
+    /// anomaly was measured; the direction of magnetisation stays as it is. Plane and level are dropped. The guard of
+    /// [`Self::to_pole`] holds.
+    ///
+    /// Source: Blakely (1995), chapters 5 and 12: the anomaly is - f.grad V along the field f.
+    ///
+    /// # Errors
+    /// Only a defect of the transform.
+    pub fn to_magnetic_potential(&self, field: Direction) -> Result<Self> {
+        self.filtered(Plane::flat(0.0), |wave| to_potential(field, wave))
+    }
+
+    /// Scalar magnetic potential (nT m) of bodies magnetised along `magnetisation` turned into the vertical gravity of the
+    /// same bodies, mGal, if each A/m of magnetisation stood for `ratio` kg/m3 of density contrast. Level and plane are
+    /// dropped. For vertical magnetisation it is a mere change of scale.
+    ///
+    /// Source: Poisson's relation V = - (mu0 / 4 pi) M / (G rho) g_m, g_m the component of gravity along the magnetisation
+    /// (Poisson 1826; Blakely 1995, chapter 5).
+    ///
+    /// # Errors
+    /// A ratio that is not positive and finite.
+    pub fn potential_to_gravity(&self, magnetisation: Direction, ratio: f64) -> Result<Self> {
+        let ratio = checked_ratio(ratio)?;
+        self.filtered(Plane::flat(0.0), |wave| to_gravity(magnetisation, ratio, wave))
+    }
+
+    /// Total-field anomalies (nT) turned into pseudo-gravity (mGal): the vertical gravity of the same bodies if each
+    /// A/m of magnetisation stood for `ratio` kg/m3 of density contrast. It is [`Self::to_magnetic_potential`] followed by
+    /// [`Self::potential_to_gravity`] in one step. The plane is dropped, as Poisson's relation gives it no meaning, so the
+    /// level is arbitrary. The guard of [`Self::to_pole`] holds.
+    ///
+    /// Source: Baranov (1957), Geophysics 22, 359-382; Blakely (1995), section 12.3.2.
+    ///
+    /// # Errors
+    /// A ratio that is not positive and finite.
+    pub fn to_pseudo_gravity(&self, directions: MagneticDirections, ratio: f64) -> Result<Self> {
+        let ratio = checked_ratio(ratio)?;
+        self.filtered(Plane::flat(0.0), |wave| {
+            to_potential(directions.field, wave) * to_gravity(directions.magnetisation, ratio, wave)
+        })
     }
 }

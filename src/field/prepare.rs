@@ -4,10 +4,12 @@ use ndarray::{Array2, Zip};
 use rustfft::num_complex::Complex64;
 
 use super::Gradient;
-use super::gaps::fill_gaps;
+use super::check::checked_layer;
+use super::gaps::fill_in_place;
 use super::plane::regional_plane;
-use super::pole::{InducingField, checked_ratio};
-use super::spectrum::Spectrum;
+use super::sources;
+use super::spectrum::{Spectrum, Wave};
+use super::surroundings::Surroundings;
 use crate::error::{Error, Result};
 use crate::grid::{Frame, Grid, Mask, Plane};
 
@@ -37,9 +39,10 @@ pub struct PreparedField {
 impl PreparedField {
     /// Prepares a layer of gravity (mGal), magnetic anomalies (nT) or another potential field.
     ///
-    /// Steps: fit a plane to the cells that hold a number and take it out; fill the gaps harmonically ([`super::fill_gaps`]);
-    /// mirror and taper the layer to at least twice its side; one forward transform. The plane is put back where it
-    /// belongs: its slope into the horizontal derivatives, the whole of it into continued fields.
+    /// Steps: find the plane and the sparse sheet of sources that explain the layer together (the plane starts from the
+    /// rim of the footprint); take both off; fill the gaps ([`super::fill_gaps`]); pad to at least twice the side, with the
+    /// field of the sources around the layer; one forward transform, which holds the sources again. The plane is put
+    /// back where it belongs: its slope into the horizontal derivatives, the whole of it into continued fields.
     ///
     /// Without knowledge of the ground outside, the level and the longest waves of a product remain uncertain near the
     /// edge; derivatives are much less so.
@@ -54,23 +57,15 @@ impl PreparedField {
                 .wanted(format!("at least {LEAST_SIDE} rows and {LEAST_SIDE} columns"))
                 .mend("choose a smaller frame.cell or a larger frame"));
         }
-        let Some((low, high)) = grid.range() else {
-            return Err(Error::input("a potential-field layer")
-                .found("no cell that holds a number")
-                .wanted("data on the frame")
-                .mend("check the no-data value, and that the layer overlaps the frame"));
-        };
-        if high - low <= 1e-12 * high.abs().max(low.abs()) {
-            return Err(Error::input("a potential-field layer")
-                .found(format!("the layer is constant: {low} everywhere"))
-                .wanted("a field that varies")
-                .mend("check that this is the right band of the file"));
-        }
+        checked_layer(grid)?;
         let frame = grid.frame().clone();
-        let plane = regional_plane(grid.values());
+        let (plane, sources) = sources::fit(grid.values(), regional_plane(grid.values()));
+        let around = Surroundings::new(frame.shape(), &sources);
         let mut rest = grid.values().clone();
-        Zip::indexed(&mut rest).for_each(|(row, col), value| *value -= plane.at(row, col));
-        let spectrum = Spectrum::new(&fill_gaps(&rest)?, frame.cell)?;
+        Zip::indexed(&mut rest).par_for_each(|(row, col), value| *value -= plane.at(row, col));
+        around.take_off(&mut rest);
+        fill_in_place(&mut rest)?;
+        let spectrum = Spectrum::new(&rest, &around, frame.cell)?;
         Ok(Self { footprint: grid.footprint(), frame, plane, spectrum })
     }
 
@@ -93,34 +88,13 @@ impl PreparedField {
         self.filtered(self.plane, |wave| Complex64::new((-wave.length * height).exp(), 0.0))
     }
 
-    /// Total-field anomalies (nT) reduced to the pole, for magnetisation along the inducing field. The plane passes
-    /// unchanged.
-    ///
-    /// # Errors
-    /// Only a defect of the transform.
-    pub fn to_pole(&self, field: InducingField) -> Result<Self> {
-        self.filtered(self.plane, |wave| field.to_pole(wave))
-    }
-
-    /// Total-field anomalies (nT) turned into pseudo-gravity (mGal): the vertical gravity of the same bodies if each
-    /// A/m of magnetisation stood for `ratio` kg/m3 of density contrast. The plane is dropped, as Poisson's relation
-    /// gives it no meaning, so the level is arbitrary.
-    ///
-    /// # Errors
-    /// A ratio that is not positive and finite.
-    pub fn to_pseudo_gravity(&self, field: InducingField, ratio: f64) -> Result<Self> {
-        let ratio = checked_ratio(ratio)?;
-        self.filtered(Plane::flat(0.0), |wave| field.to_pseudo_gravity(wave, ratio))
-    }
-
     /// The field itself, on its footprint.
     ///
     /// # Errors
     /// Only a defect of the transform.
     pub fn values(&self) -> Result<Grid> {
-        let mut values = self.spectrum.clone().layer()?;
-        Zip::indexed(&mut values).for_each(|(row, col), value| *value += self.plane.at(row, col));
-        Grid::new(self.frame.clone(), self.masked(values))
+        let values = self.spectrum.layer()?;
+        Grid::new(self.frame.clone(), self.masked(values, |row, col| self.plane.at(row, col)))
     }
 
     /// The field continued upward by `height` metres, on its footprint.
@@ -138,19 +112,41 @@ impl PreparedField {
     /// A height that is negative or not finite.
     pub fn gradient(&self, height: f64) -> Result<Gradient> {
         let height = checked_height(height)?;
-        let fade = |length: f64| (-length * height).exp();
-        let east = self.spectrum.filtered(|wave| Complex64::new(0.0, wave.east * fade(wave.length)))?.layer()?;
-        let north = self.spectrum.filtered(|wave| Complex64::new(0.0, wave.north * fade(wave.length)))?.layer()?;
-        let down = self.spectrum.filtered(|wave| Complex64::new(wave.length * fade(wave.length), 0.0))?.layer()?;
+        let fade = |length: f64| if height == 0.0 { 1.0 } else { (-length * height).exp() };
+        let east = self.spectrum.layer_under(|wave| Complex64::new(0.0, wave.east * fade(wave.length)))?;
+        let north = self.spectrum.layer_under(|wave| Complex64::new(0.0, wave.north * fade(wave.length)))?;
+        let down = self.spectrum.layer_under(|wave| Complex64::new(wave.length * fade(wave.length), 0.0))?;
         Gradient::new(
             self.frame.clone(),
-            self.masked(east + self.plane.right / self.frame.cell),
-            self.masked(north - self.plane.down / self.frame.cell),
-            self.masked(down),
+            self.masked(east, |_, _| self.plane.right / self.frame.cell),
+            self.masked(north, |_, _| -self.plane.down / self.frame.cell),
+            self.masked(down, |_, _| 0.0),
         )
     }
 
-    fn filtered(&self, plane: Plane, filter: impl Fn(super::spectrum::Wave) -> Complex64 + Sync) -> Result<Self> {
+    /// The plane that was set aside.
+    pub(super) fn plane(&self) -> Plane {
+        self.plane
+    }
+
+    /// The field with each wave multiplied by a number that depends on its length (radians per metre) alone; the plane
+    /// passes unchanged.
+    pub(super) fn faded(&self, keeps: impl Fn(f64) -> f64 + Sync) -> Result<Self> {
+        self.filtered(self.plane, |wave| Complex64::new(keeps(wave.length), 0.0))
+    }
+
+    /// Slope of the plane that was set aside, units of the field per metre.
+    pub(super) fn slope(&self) -> f64 {
+        self.plane.right.hypot(self.plane.down) / self.frame.cell
+    }
+
+    /// Tells the length of each wavenumber, radians per metre, and the power that it carries.
+    pub(super) fn for_each_power(&self, tell: impl FnMut(f64, f64)) {
+        self.spectrum.for_each_power(tell);
+    }
+
+    /// The field under a filter, with the plane that goes with it.
+    pub(super) fn filtered(&self, plane: Plane, filter: impl Fn(Wave) -> Complex64 + Sync) -> Result<Self> {
         Ok(Self {
             frame: self.frame.clone(),
             footprint: self.footprint.clone(),
@@ -159,24 +155,28 @@ impl PreparedField {
         })
     }
 
-    fn masked(&self, mut values: Array2<f64>) -> Array2<f64> {
-        Zip::from(&mut values).and(&self.footprint.0).for_each(|value, &inside| {
-            if !inside {
-                *value = f64::NAN;
-            }
+    /// The layer under a filter, without the plane, on the footprint.
+    pub(super) fn product(&self, filter: impl Fn(Wave) -> Complex64 + Sync) -> Result<Array2<f64>> {
+        Ok(self.masked(self.spectrum.layer_under(filter)?, |_, _| 0.0))
+    }
+
+    /// The values with what `more` says for each (row, column) added, NaN outside the footprint.
+    fn masked(&self, mut values: Array2<f64>, more: impl Fn(usize, usize) -> f64 + Sync) -> Array2<f64> {
+        Zip::indexed(&mut values).and(&self.footprint.0).par_for_each(|(row, col), value, &inside| {
+            *value = if inside { *value + more(row, col) } else { f64::NAN };
         });
         values
     }
 }
 
-fn checked_height(height: f64) -> Result<f64> {
+pub(super) fn checked_height(height: f64) -> Result<f64> {
     if height.is_finite() && height >= 0.0 {
         return Ok(height);
     }
     Err(Error::input("the height of a continued field")
         .found(height)
         .wanted("zero or a positive number of metres, upward")
-        .mend("set heights to numbers such as 0 and 1000; downward continuation is not offered"))
+        .mend("give heights such as 0 and 1000; downward continuation is a transform of its own"))
 }
 
 /// A field continued upward by `height` metres; for several products of one layer use [`PreparedField`].
@@ -214,6 +214,7 @@ pub fn tilt_derivative(grid: &Grid) -> Result<Grid> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::field::{Direction, MagneticDirections};
 
     fn layer(rows: usize, cols: usize, of: impl Fn(f64, f64) -> f64) -> Grid {
         let frame = Frame::local(100.0, rows, cols).unwrap();
@@ -285,13 +286,15 @@ mod tests {
         let grid = bumps().with(values).unwrap();
         let field = PreparedField::new(&grid).unwrap();
         let gradient = field.gradient(100.0).unwrap();
-        let north_down = InducingField::new(60.0, 3.0).unwrap();
+        let directions = MagneticDirections::induced(Direction::new(60.0, 3.0).unwrap());
         for product in [
             field.upward(100.0).unwrap().into_values(),
             gradient.horizontal(),
             gradient.tilt(),
-            field.to_pole(north_down).unwrap().values().unwrap().into_values(),
-            field.to_pseudo_gravity(north_down, 1.0).unwrap().values().unwrap().into_values(),
+            field.to_pole(directions).unwrap().values().unwrap().into_values(),
+            field.to_pseudo_gravity(directions, 1.0).unwrap().values().unwrap().into_values(),
+            field.vertical().unwrap().values().unwrap().into_values(),
+            field.second_derivatives(0.0).unwrap().down_down().clone(),
         ] {
             assert_eq!(Mask::of_finite(&product), grid.footprint());
         }

@@ -1,13 +1,8 @@
-//! What a file holds, in words: for a person who wonders how it would be read.
+//! What a raster holds, in words: for a person who wonders how it would be read.
 
 use std::fmt::Write as _;
-use std::path::Path;
 
-use gdal::vector::LayerAccess;
-use gdal::{Dataset, DatasetOptions, GdalOpenFlags};
-
-use super::Crs;
-use super::source::{Raster, Window, silence_gdal};
+use super::source::{Raster, Window};
 use crate::error::{Error, Result};
 
 impl Raster {
@@ -102,27 +97,4 @@ impl Raster {
         }
         Ok(text.trim_end().to_string())
     }
-}
-
-/// The layers of a vector file in words, or `None` if it is not one.
-pub fn describe_layers(path: &Path) -> Option<String> {
-    silence_gdal();
-    let options = DatasetOptions { open_flags: GdalOpenFlags::GDAL_OF_VECTOR, ..DatasetOptions::default() };
-    let dataset = path.exists().then(|| Dataset::open_ex(path, options).ok()).flatten()?;
-    let mut text = format!("{}: vector file ({})", path.display(), dataset.driver().short_name());
-    for layer in dataset.layers() {
-        let crs = layer.spatial_ref().and_then(|reference| Crs::from_reference(&reference).ok());
-        let _ = write!(
-            text,
-            "\n  layer {:?}: {} features, {}",
-            layer.name(),
-            layer.feature_count(),
-            crs.map_or("no coordinate system".into(), |crs| crs.name)
-        );
-        let fields: Vec<String> = layer.defn().fields().map(|field| field.name()).collect();
-        if !fields.is_empty() {
-            let _ = write!(text, "; fields {}", fields.join(", "));
-        }
-    }
-    Some(text)
 }

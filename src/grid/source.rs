@@ -237,7 +237,11 @@ impl Source {
             transform,
             no_data: first.no_data_value(),
             scaling: (first.scale().unwrap_or(1.0), first.offset().unwrap_or(0.0)),
-            unit: first.unit(),
+            unit: match first.unit() {
+                // Our own GeoTIFFs carry it as an item, as others do.
+                unit if unit.is_empty() => first.metadata_item("units", "").unwrap_or_default(),
+                unit => unit,
+            },
             depths: (1..=bands).map(|band| band_depth(&dataset, band)).collect(),
             path: self.path.clone(),
             dataset,

@@ -1,6 +1,8 @@
 //! The answer in words, made from the tests.
 
-use super::run::Findings;
+use super::run::{Findings, SubjectFinding};
+use super::series::Series;
+use super::settings::UnitRole;
 use crate::coincidence::{Measure, Refusal, Test, VALID_LEVEL, Verdict};
 use crate::conductor::Side;
 use crate::evidence::{Answer, KeyFigure, depth_label, distance_label, grouped, significant};
@@ -21,32 +23,36 @@ impl Findings {
         p_label(p, test.family_smallest_p)
     }
 
-    /// Depth of a test's subject, m.
-    pub(super) fn depth(&self, test: &Test) -> f64 {
-        self.slices[self.subjects[test.subject].0].depth
-    }
-
-    /// Side of a test's subject.
-    pub(super) fn side(&self, test: &Test) -> Side {
-        self.subjects[test.subject].1
-    }
-
-    /// Name of a test's reference, with its height where it has one.
-    pub(super) fn reference_label(&self, index: usize) -> String {
-        let reference = &self.references[index];
-        match (reference.potential, reference.height) {
-            (Some(_), Some(height)) if height > 0.0 => {
-                format!("{} contacts (continued up {})", reference.name, distance_label(height))
-            }
-            (Some(_), _) => format!("{} contacts", reference.name),
-            (None, _) => reference.name.clone(),
+    /// Depth of a test's subject, m; `None` for mapped units.
+    pub(super) fn depth(&self, test: &Test) -> Option<f64> {
+        match self.subjects[test.subject] {
+            SubjectFinding::Bodies { slice, .. } => Some(self.slices[slice].depth),
+            SubjectFinding::Units(_) => None,
         }
     }
 
-    /// The distance at which a reference's enrichment is told: the one with the highest score over all depths.
-    pub(super) fn telling_distance(&self, reference: usize, side: Side) -> f64 {
+    /// The depth in words: "1,500 m", or "the surface" for mapped units.
+    fn depth_words(&self, test: &Test) -> String {
+        self.depth(test).map_or_else(|| "the surface".into(), depth_label)
+    }
+
+    /// Side of a test's subject; `None` for mapped units.
+    pub(super) fn side(&self, test: &Test) -> Option<Side> {
+        match self.subjects[test.subject] {
+            SubjectFinding::Bodies { side, .. } => Some(side),
+            SubjectFinding::Units(_) => None,
+        }
+    }
+
+    /// The series that a test's reference belongs to.
+    pub(super) fn series_of(&self, test: &Test) -> Series {
+        self.series[self.references[test.reference].series]
+    }
+
+    /// The distance at which a series' enrichment is told: the one with the highest score over all depths.
+    pub(super) fn telling_distance(&self, series: Series, side: Side) -> f64 {
         let tests = self.comparison.tests.iter().filter(|test| {
-            test.reference == reference && self.side(test) == side && test.tested && test.score.is_finite()
+            self.series_of(test) == series && self.side(test) == Some(side) && test.tested && test.score.is_finite()
         });
         let best = tests.filter(|test| test.measure.within().is_some()).max_by(|a, b| a.score.total_cmp(&b.score));
         best.and_then(|test| test.measure.within()).unwrap_or(self.plan.within[0])
@@ -59,7 +65,10 @@ impl Findings {
         let lines: Vec<String> = study.lines.iter().map(|lines| lines.name.clone()).collect();
         let margins = (!fields.is_empty()).then(|| format!("the margins in {}", list(&fields)));
         let mapped = (!lines.is_empty()).then(|| format!("the lines of {}", list(&lines)));
-        let both: Vec<String> = margins.into_iter().chain(mapped).collect();
+        let stay = study.units.iter().filter(|units| units.role == UnitRole::Reference);
+        let units: Vec<String> = stay.map(|units| units.name.clone()).collect();
+        let ground = (!units.is_empty()).then(|| format!("the ground of {}", list(&units)));
+        let both: Vec<String> = margins.into_iter().chain(mapped).chain(ground).collect();
         format!(
             "Do the conductors keep to {} more closely than chance would give, at which depth and within what distance?",
             list(&both)
@@ -68,7 +77,7 @@ impl Findings {
 
     /// The answer: what was found for conductors first, then the rest.
     pub(super) fn answer(&self) -> Answer {
-        let of_conductors = |test: &&Test| self.side(test) == Side::Conductor && test.tested;
+        let of_conductors = |test: &&Test| self.side(test) == Some(Side::Conductor) && test.tested;
         let tests: Vec<&Test> = self.comparison.tests.iter().filter(of_conductors).collect();
         let found: Vec<&Test> = tests.iter().copied().filter(|test| test.verdict == Verdict::Found).collect();
         let enriched: Vec<&Test> = found.iter().copied().filter(|test| test.measure.within().is_some()).collect();
@@ -93,17 +102,21 @@ impl Findings {
     }
 
     fn found_headline(&self, best: &Test, enriched: &[&Test]) -> String {
-        let depths = self.depths(enriched.iter().copied().filter(|test| test.reference == best.reference));
+        let depths = self.depths(enriched.iter().copied().filter(|test| self.series_of(test) == self.series_of(best)));
         let within = best.measure.within().unwrap_or(f64::NAN);
+        let near = match self.series_of(best) {
+            Series::Units(_) if within == 0.0 => "inside them".to_string(),
+            Series::Units(_) => format!("within {} of them", distance_label(within)),
+            Series::Lines(_) => format!("within {} of a line", distance_label(within)),
+            _ => format!("within {} of a contact line", distance_label(within)),
+        };
         format!(
-            "Yes, at {}: conductors keep to {} more closely than chance. At {}, {} of their area lies within {} of a \
-             {} against {} of the ground; that is {} times what displacement gives ({} with all {} tests counted).",
+            "Yes, at {}: conductors keep to {} more closely than chance. At {}, {} of their area lies {near} \
+             against {} of the ground; that is {} times what displacement gives ({} with all {} tests counted).",
             list(&depths),
-            self.reference_label(best.reference),
-            depth_label(self.depth(best)),
+            self.plan.series_label(self.series_of(best)),
+            self.depth_words(best),
             percent(best.subject_share),
-            distance_label(within),
-            if self.references[best.reference].potential.is_some() { "contact line" } else { "line" },
             percent(best.ground_share),
             significant(best.effect, 3),
             self.p_label(best, best.p_family.unwrap_or(1.0)),
@@ -119,11 +132,14 @@ impl Findings {
                 "In part, at {}: log10 conductivity rises with the gradient strength of {} (coefficient {}, {} with all {} \
                  tests counted), but {}.",
                 list(&self.depths(found.iter().copied())),
-                self.references[best.reference].name,
+                self.field_name(best),
                 significant(best.observed, 2),
                 self.p_label(best, best.p_family.unwrap_or(1.0)),
                 self.comparison.family_tests,
-                if judged.iter().any(|test| test.measure.within().is_some() && test.reference == best.reference) {
+                if judged
+                    .iter()
+                    .any(|test| { test.measure.within().is_some() && self.series_of(test) == self.series_of(best) })
+                {
                     "the conductors as bodies are not shown to lie closer to its contacts than chance"
                 } else {
                     "whether the conductors as bodies lie closer to its contacts than chance, the data cannot tell"
@@ -158,17 +174,20 @@ impl Findings {
     }
 
     fn key_figures(&self, best: &Test) -> Vec<KeyFigure> {
-        let within = distance_label(best.measure.within().unwrap_or(f64::NAN));
+        let within = match best.measure.within() {
+            Some(within) if within > 0.0 => format!("within {}", distance_label(within)),
+            _ => "inside".into(),
+        };
         let mut figures = vec![
             KeyFigure {
                 label: "Enrichment".into(),
                 value: format!("{} \u{d7}", significant(best.effect, 3)),
                 note: format!(
-                    "observed {} against {} to {} under displacement, within {within} at {}",
+                    "observed {} against {} to {} under displacement, {within} at {}",
                     significant(best.observed, 3),
                     significant(best.low, 3),
                     significant(best.high, 3),
-                    depth_label(self.depth(best))
+                    self.depth_words(best)
                 ),
             },
             KeyFigure {
@@ -198,16 +217,16 @@ impl Findings {
 
     fn detail(&self, found: &[&Test]) -> Vec<String> {
         let mut detail = Vec::new();
-        for reference in 0..self.references.len() {
-            let label = self.reference_label(reference);
-            let here = |test: &&Test| test.reference == reference;
+        for series in self.series.iter().copied() {
+            let label = self.plan.series_label(series);
+            let here = |test: &&Test| self.series_of(test) == series;
             let near = |test: &&Test| here(test) && test.measure.within().is_some();
             let with_strength = |test: &&Test| here(test) && test.measure == Measure::Correlation;
             let depths = self.depths(found.iter().copied().filter(near));
             let correlated = self.depths(found.iter().copied().filter(with_strength));
             detail.push(match (depths.is_empty(), correlated.is_empty()) {
                 (true, true)
-                    if !self.told(|test| test.reference == reference && self.side(test) == Side::Conductor) =>
+                    if !self.told(|test| self.series_of(test) == series && self.side(test) == Some(Side::Conductor)) =>
                 {
                     format!("{}: the data cannot tell.", capital(&label))
                 }
@@ -228,12 +247,12 @@ impl Findings {
                 ),
             });
         }
-        let resistors = self.comparison.tests.iter().filter(|test| self.side(test) == Side::Resistor);
+        let resistors = self.comparison.tests.iter().filter(|test| self.side(test) == Some(Side::Resistor));
         let of_resistors: Vec<&Test> = resistors.filter(|test| test.tested).collect();
         if !of_resistors.is_empty() {
             let kept = of_resistors.into_iter().filter(|test| test.verdict == Verdict::Found);
             let depths = self.depths(kept);
-            detail.push(if !self.told(|test| self.side(test) == Side::Resistor) {
+            detail.push(if !self.told(|test| self.side(test) == Some(Side::Resistor)) {
                 "Resistors: the data cannot tell.".into()
             } else if depths.is_empty() {
                 "Resistors are not shown to lie closer to any of the margins than chance.".into()
@@ -241,7 +260,42 @@ impl Findings {
                 format!("Resistors lie closer to margins than chance at {}.", list(&depths))
             });
         }
+        detail.extend((0..self.units.len()).filter_map(|index| self.moved_units_said(index)));
         detail
+    }
+
+    /// What was found of mapped units that are moved; `None` for those that stay.
+    fn moved_units_said(&self, index: usize) -> Option<String> {
+        let own = |test: &&Test| self.subjects[test.subject] == SubjectFinding::Units(index) && test.tested;
+        let tests: Vec<&Test> = self.comparison.tests.iter().filter(own).collect();
+        let name = capital(&self.plan.study.units[index].name);
+        if self.plan.study.units[index].role == UnitRole::Reference {
+            return None;
+        }
+        if !tests.iter().any(|test| test.p_family.is_some()) {
+            return Some(format!("{name}, the mapped units that were moved: the data cannot tell."));
+        }
+        let mut near: Vec<String> = Vec::new();
+        for test in tests.into_iter().filter(|test| test.verdict == Verdict::Found) {
+            let label = self.plan.series_label(self.series_of(test));
+            if !near.contains(&label) {
+                near.push(label);
+            }
+        }
+        Some(if near.is_empty() {
+            format!("{name}, the mapped units that were moved, are not shown to lie closer to anything than chance.")
+        } else {
+            format!("{name}, the mapped units that were moved, lie closer than chance to {}.", list(&near))
+        })
+    }
+
+    /// Name of the potential field behind a test.
+    fn field_name(&self, test: &Test) -> String {
+        let series = self.series_of(test);
+        match series.potential() {
+            Some(index) => self.plan.study.potentials[index].name.clone(),
+            None => self.plan.series_label(series),
+        }
     }
 
     /// True if any of some tests has a family-wise p-value.
@@ -289,10 +343,17 @@ impl Findings {
                 list(&trends)
             ));
         }
-        let bare: Vec<String> = (0..self.references.len())
-            .filter(|index| self.references[*index].lines.is_empty())
-            .map(|index| self.reference_label(index))
-            .collect();
+        let mut bare: Vec<String> = Vec::new();
+        for reference in self.references.iter().filter(|reference| reference.lines.is_empty()) {
+            let label = self.plan.series_label(self.series[reference.series]);
+            // Units that cover the whole frame have no outline in it, and a test of them says so itself.
+            if reference.height.is_some() || reference.slice.is_some() {
+                bare.push(match reference.slice {
+                    Some(slice) => format!("{label} at {}", depth_label(self.slices[slice].depth)),
+                    None => label,
+                });
+            }
+        }
         if !bare.is_empty() {
             limits.push(format!("No line was found for {}.", list(&bare)));
         }
@@ -327,7 +388,7 @@ impl Findings {
 
     /// The depths of some tests, each once, from the shallowest down.
     fn depths<'a>(&self, tests: impl Iterator<Item = &'a Test>) -> Vec<String> {
-        let mut depths: Vec<f64> = tests.map(|test| self.depth(test)).collect();
+        let mut depths: Vec<f64> = tests.filter_map(|test| self.depth(test)).collect();
         depths.sort_by(f64::total_cmp);
         depths.dedup();
         depths.into_iter().map(depth_label).collect()

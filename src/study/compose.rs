@@ -19,6 +19,8 @@ pub struct NamedFiles {
     pub magnetic: Vec<PathBuf>,
     /// Vector files with mapped lines.
     pub lines: Vec<PathBuf>,
+    /// Vector files with mapped units.
+    pub units: Vec<PathBuf>,
     /// A table of known deposits.
     pub deposits: Option<PathBuf>,
 }
@@ -29,11 +31,11 @@ pub struct NamedFiles {
 /// # Errors
 /// No reference among the files, a raster that cannot be read, a file with a depth axis beside single slices.
 pub fn compose(choice: &NamedFiles) -> Result<String> {
-    if choice.gravity.is_empty() && choice.magnetic.is_empty() && choice.lines.is_empty() {
+    if [&choice.gravity, &choice.magnetic, &choice.lines, &choice.units].iter().all(|files| files.is_empty()) {
         return Err(Error::input("the files named")
-            .found("no gravity, magnetic or line file")
+            .found("no gravity, magnetic, line or unit file")
             .wanted("at least one reference to test the conductors against")
-            .mend("add --gravity, --magnetic or --lines"));
+            .mend("add --gravity, --magnetic, --lines or --units"));
     }
     let relative = |path: &Path| quoted(&relative_to(path, choice.study.parent().unwrap_or(Path::new(""))));
     let mut text = String::from(
@@ -111,20 +113,35 @@ pub fn compose(choice: &NamedFiles) -> Result<String> {
             );
             if kind == "magnetic" {
                 text.push_str(
-                    "# Needed: the direction of the earth's field for the place and date of the survey, degrees.\n\
+                    "# Needed: the direction of the earth's field for the place and date of the survey, degrees; or its year.\n\
                      # inclination = 0.0               # positive down\n\
-                     # declination = 0.0               # positive east of true north\n",
+                     # declination = 0.0               # positive east of true north\n\
+                     # year = 2012.5                   # in place of both: by the reference model, 1900 to 2025\n\
+                     # magnetisation = { inclination = 0.0, declination = 0.0 }   # where not along the field\n",
                 );
             }
             text.push_str(
-                "# heights = [0.0]                 # upward continuation before contacts are picked, m; [0.0, 1000.0] tries both\n\
-                 # contacts = { strong = 0.6, weak = 0.3 }   # quantiles of crest strength where lines start and end\n",
+                "# heights = [0.0, 1000.0]         # upward continuation before contacts are picked, m; left out: 0 and, for\n\
+                 #                                 # each slice, half its depth\n\
+                 # noise = 0.05                    # of one cell, in the grid's unit; left out, it is estimated\n\
+                 # contacts = { strong = 0.6, weak = 0.3, significance = 0.05 }   # quantiles of crest strength where lines start\n\
+                 #                                 # and end; the chance that noise alone gives a layer any\n",
             );
         }
     }
     for (index, path) in choice.lines.iter().enumerate() {
         let name = if index == 0 { "lines".to_string() } else { format!("lines {}", index + 1) };
         let _ = writeln!(text, "\n[[lines]]\nname = {}\npath = {}", quoted(&name), relative(path));
+    }
+    for (index, path) in choice.units.iter().enumerate() {
+        let name = if index == 0 { "units".to_string() } else { format!("units {}", index + 1) };
+        let _ = writeln!(
+            text,
+            "\n[[units]]\nname = {}\npath = {}\n# keep = {{ column = \"...\", is = [\"...\"] }}   # which polygons; salband inspect \
+             lists columns and values\n# role = \"reference\"   # or \"subject\": moved over everything else",
+            quoted(&name),
+            relative(path)
+        );
     }
     if let Some(path) = &choice.deposits {
         let _ = writeln!(
@@ -137,7 +154,9 @@ pub fn compose(choice: &NamedFiles) -> Result<String> {
     text.push_str(
         "\n[test]\n\
          # within = [500.0, 1000.0, 2000.0]   # metres; default: 1, 2 and 4 cells\n\
-         # family = 0.05                      # level of the whole family of tests\n",
+         # family = 0.05                      # level of the whole family of tests\n\
+         # height_per_depth = 0.5             # heights that go with each slice, where a field lists none\n\
+         # resolution = \"as-is\"               # or \"matched\": all layers of a depth brought to one resolving length\n",
     );
     Ok(text)
 }

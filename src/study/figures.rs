@@ -1,6 +1,8 @@
 //! The figures of a run, made from the findings.
 
 use super::run::Findings;
+use super::series::Series;
+use super::slices::SliceFinding;
 use crate::coincidence::{Measure, Test, Verdict};
 use crate::conductor::{Side, outlines};
 use crate::error::Result;
@@ -18,7 +20,7 @@ impl Findings {
         let strength = reference.and_then(|reference| reference.strength.as_ref());
         let gradient = strength.map(|strength| strength.map(|value| 1000.0 * value));
         let unit = reference
-            .and_then(|reference| reference.potential)
+            .and_then(|reference| self.series[reference.series].potential())
             .map_or("", |index| self.plan.study.potentials[index].kind.unit());
         let lines: Vec<ContactLine> = match reference {
             Some(reference) => {
@@ -37,13 +39,13 @@ impl Findings {
             .filter(|deposit| deposit.cell.is_some())
             .map(|deposit| Deposit { name: deposit.name.clone(), x: deposit.x, y: deposit.y })
             .collect();
-        let draw = |slice: &super::run::SliceFinding| {
+        let draw = |slice: &SliceFinding| {
             let shapes = outlines(&slice.conductors, frame);
             let footprint = slice.placed.grid.footprint();
             // Where no field has a gradient, as with mapped lines alone, the slice itself lies underneath.
             let (background, underneath) = match gradient.as_ref().zip(reference) {
                 Some((grid, reference)) => {
-                    let label = format!("Gradient of {}, {unit}/km", reference.name);
+                    let label = format!("Gradient of {}, {unit}/km", self.field_of(reference));
                     (Background { grid, colours: Colours::Quiet, label }, "the gradient strength")
                 }
                 None => {
@@ -77,51 +79,51 @@ impl Findings {
     /// then resistors.
     pub(super) fn curves(&self) -> Vec<(Figure, String)> {
         let mut curves = Vec::new();
-        let all = 0..self.references.len();
-        all.clone().for_each(|reference| curves.extend(self.body_curves(reference, Side::Conductor)));
-        curves.extend(all.clone().filter_map(|reference| self.correlation_curve(reference)));
-        all.for_each(|reference| curves.extend(self.body_curves(reference, Side::Resistor)));
+        let all = || self.series.iter().copied();
+        all().for_each(|series| curves.extend(self.body_curves(series, Side::Conductor)));
+        curves.extend(all().filter_map(|series| self.correlation_curve(series)));
+        all().for_each(|series| curves.extend(self.body_curves(series, Side::Resistor)));
         curves
     }
 
-    /// The stem of a figure's file name for a reference.
-    pub(super) fn figure_stem(&self, reference: usize) -> String {
-        let reference = &self.references[reference];
-        match reference.height {
-            Some(height) => format!("{}_{height}", reference.name),
-            None => reference.name.clone(),
-        }
+    /// Name of the potential field behind a reference.
+    fn field_of(&self, reference: &super::references::ReferenceFinding) -> String {
+        let potential = self.series[reference.series].potential();
+        potential.map_or_else(String::new, |index| self.plan.study.potentials[index].name.clone())
     }
 
     /// Enrichment against depth, and against distance at each depth.
-    fn body_curves(&self, reference: usize, side: Side) -> Vec<(Figure, String)> {
-        let here = |test: &&Test| test.reference == reference && self.side(test) == side;
+    fn body_curves(&self, series: Series, side: Side) -> Vec<(Figure, String)> {
+        let here = |test: &&Test| self.series_of(test) == series && self.side(test) == Some(side);
         let tests: Vec<&Test> = self.comparison.tests.iter().filter(here).collect();
         if tests.is_empty() {
             return Vec::new();
         }
-        let label = self.reference_label(reference);
-        let stem = self.figure_stem(reference);
+        let label = self.plan.series_label(series);
+        let stem = self.plan.series_stem(series);
         let bodies = match side {
             Side::Conductor => "Conductors",
             Side::Resistor => "Resistors",
         };
-        let within = self.telling_distance(reference, side);
+        let within = self.telling_distance(series, side);
+        let near_it = self.plan.near_label(series, within);
         let near = |test: &&&Test| test.measure.within() == Some(within) && test.tested;
         let caption = format!(
-            "{bodies} within {} of {label}: share of their area over the share of the ground (dots), against the middle \
+            "{bodies} {near_it}: share of their area over the share of the ground (dots), against the middle \
              95 % of what displacement gives (bars). A filled dot is closer than chance with the whole family counted. Of \
-             the tested distances, the one with the highest score is shown.",
-            distance_label(within)
+             the tested distances, the one with the highest score is shown."
         );
         let curve = DepthCurve {
             name: format!("enrichment_{}_{stem}", bodies.to_lowercase()),
             title: format!("{bodies} near {label}"),
             description: caption.clone(),
-            measure: format!("Enrichment within {} (ratio)", distance_label(within)),
+            measure: match within {
+                0.0 => "Enrichment inside (ratio)".into(),
+                within => format!("Enrichment within {} (ratio)", distance_label(within)),
+            },
             neutral: Some(1.0),
             alpha: self.plan.study.test.level,
-            rows: tests.iter().filter(near).map(|test| self.depth_row(test)).collect(),
+            rows: tests.iter().filter(near).filter_map(|test| self.depth_row(test)).collect(),
         };
         let distances = format!(
             "{bodies} within a growing distance of {label}, at each depth; the band is pointwise. Only the tested distances \
@@ -140,8 +142,8 @@ impl Findings {
     }
 
     /// Correlation with the gradient against depth; `None` for mapped lines, which have no gradient.
-    fn correlation_curve(&self, reference: usize) -> Option<(Figure, String)> {
-        let here = |test: &&Test| test.reference == reference && test.measure == Measure::Correlation;
+    fn correlation_curve(&self, series: Series) -> Option<(Figure, String)> {
+        let here = |test: &&Test| self.series_of(test) == series && test.measure == Measure::Correlation;
         let tests: Vec<&Test> = self.comparison.tests.iter().filter(here).collect();
         if tests.is_empty() {
             return None;
@@ -149,24 +151,24 @@ impl Findings {
         let caption = format!(
             "Correlation of log10 conductivity with the gradient strength of {}, a plane taken out of both, against the \
              middle 95 % of what displacement gives.",
-            self.references[reference].name
+            series.potential().map_or("", |index| &self.plan.study.potentials[index].name)
         );
         let figure = DepthCurve {
-            name: format!("correlation_{}", self.figure_stem(reference)),
-            title: format!("Conductivity and the gradient behind {}", self.reference_label(reference)),
+            name: format!("correlation_{}", self.plan.series_stem(series)),
+            title: format!("Conductivity and the gradient behind {}", self.plan.series_label(series)),
             description: caption.clone(),
             measure: "Correlation (coefficient)".into(),
             neutral: Some(0.0),
             alpha: self.plan.study.test.level,
-            rows: tests.into_iter().map(|test| self.depth_row(test)).collect(),
+            rows: tests.into_iter().filter_map(|test| self.depth_row(test)).collect(),
         };
         Some((figure.draw(), caption))
     }
 
-    fn depth_row(&self, test: &Test) -> DepthRow {
+    fn depth_row(&self, test: &Test) -> Option<DepthRow> {
         let finite = |value: f64| value.is_finite().then_some(value);
-        DepthRow {
-            depth_m: self.depth(test),
+        Some(DepthRow {
+            depth_m: self.depth(test)?,
             reading: Reading {
                 observed: finite(test.observed),
                 null_low: finite(test.low),
@@ -179,7 +181,7 @@ impl Findings {
                 (None, Verdict::CannotTell(_)) => "cannot tell".into(),
                 (None, _) => String::new(),
             },
-        }
+        })
     }
 
     /// One panel of the profile for each depth, distances ascending.
@@ -187,7 +189,7 @@ impl Findings {
         let mut panels: Vec<ProfilePanel> = Vec::new();
         for test in tests {
             let Some(within) = test.measure.within() else { continue };
-            let row = self.depth_row(test);
+            let Some(row) = self.depth_row(test) else { continue };
             let point = ProfilePoint { within_m: within, reading: row.reading };
             match panels.iter_mut().find(|panel| panel.depth_m == row.depth_m) {
                 Some(panel) => panel.points.push(point),

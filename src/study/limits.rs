@@ -1,10 +1,14 @@
 //! What limits the answer because of the layers themselves: thresholds, contacts, cells, footprint.
 
 use super::answer::list;
-use super::run::Findings;
+use super::references::ReferenceFinding;
+use super::run::{Findings, SubjectFinding};
+use super::settings::{Angles, MappedUnits};
 use crate::coincidence::Test;
 use crate::conductor::Threshold;
 use crate::evidence::{depth_label, distance_label, significant};
+use crate::field::LEAST_EXACT_INCLINATION;
+use crate::grid::Units;
 
 /// A footprint that fills less of its box than this, or is this many times longer than wide, counts as odd-shaped.
 const FULL: f64 = 0.9;
@@ -13,9 +17,11 @@ const LONG: f64 = 3.0;
 impl Findings {
     /// Cautions that follow from the layers of this study, with their numbers.
     pub(super) fn limits_of_layers(&self) -> Vec<String> {
-        [self.threshold_limit(), self.contact_limit(), self.cell_limit(), self.footprint_limit(), self.lines_limit()]
+        self.threshold_limit()
             .into_iter()
-            .flatten()
+            .chain(self.contact_limits())
+            .chain([self.cell_limit(), self.footprint_limit(), self.lines_limit()].into_iter().flatten())
+            .chain(self.units_limits())
             .collect()
     }
 
@@ -26,8 +32,12 @@ impl Findings {
 
     /// The larger cell, m, of the two files behind a test.
     fn coarser_cell(&self, test: &Test) -> f64 {
-        let slice = self.slices[self.subjects[test.subject].0].placed.raster_cell;
-        let field = self.references[test.reference].potential.map_or(0.0, |index| self.potentials[index].raster_cell);
+        let slice = match self.subjects[test.subject] {
+            SubjectFinding::Bodies { slice, .. } => self.slices[slice].placed.raster_cell,
+            SubjectFinding::Units(_) => 0.0,
+        };
+        let potential = self.series_of(test).potential();
+        let field = potential.map_or(0.0, |index| self.potentials[index].placed.raster_cell);
         slice.max(field)
     }
 
@@ -44,18 +54,38 @@ impl Findings {
         ))
     }
 
-    fn contact_limit(&self) -> Option<String> {
-        let first = self.references.iter().find(|reference| !reference.contacts.is_empty())?;
-        let field = &self.plan.study.potentials[first.potential?];
-        let strengths = || first.contacts.iter().map(|contact| 1000.0 * contact.mean_strength);
-        Some(format!(
-            "Contacts are picked by quantiles of crest strength, so some are always found, and weak ones may be no margin: in \
-             {} their mean gradient runs from {} to {} {}/km (table contacts).",
-            field.name,
-            significant(strengths().fold(f64::INFINITY, f64::min), 2),
-            significant(strengths().fold(0.0, f64::max), 2),
-            field.kind.unit()
-        ))
+    /// What the contacts of each field rest on: its noise, and how weak they are.
+    fn contact_limits(&self) -> Vec<String> {
+        let mut limits = Vec::new();
+        for (index, (field, found)) in self.plan.study.potentials.iter().zip(&self.potentials).enumerate() {
+            let of_field = |reference: &&ReferenceFinding| self.series[reference.series].potential() == Some(index);
+            let Some(first) = self.references.iter().filter(of_field).find(|found| !found.contacts.is_empty()) else {
+                continue;
+            };
+            let strengths = || first.contacts.iter().map(|contact| 1000.0 * contact.mean_strength);
+            limits.push(format!(
+                "Contacts of {} stand above its noise ({} {} a cell, {}): the chance that noise alone gives a layer any is at \
+                 most {}. Noise is not all: texture of the ground or of the gridding makes weak contacts that are no margin. \
+                 Their mean gradient runs from {} to {} {}/km (table contacts).",
+                field.name,
+                significant(found.noise.sigma, 2),
+                field.kind.file_unit(),
+                found.noise.origin(),
+                field.contacts.significance,
+                significant(strengths().fold(f64::INFINITY, f64::min), 2),
+                significant(strengths().fold(0.0, f64::max), 2),
+                field.kind.unit()
+            ));
+            if let Some(Angles { inclination, .. }) = self.plan.potentials[index].shallow_direction() {
+                limits.push(format!(
+                    "At an inclination of {}\u{b0} the pseudo-gravity of {} is damped along the declination (guard at \
+                     {LEAST_EXACT_INCLINATION}\u{b0}); margins that run along the declination are less certain.",
+                    significant(inclination, 3),
+                    field.name
+                ));
+            }
+        }
+        limits
     }
 
     fn cell_limit(&self) -> Option<String> {
@@ -70,8 +100,8 @@ impl Findings {
         Some(format!(
             "Within {} is finer than the cells of some files: at {} against {} they measure up to {}.",
             distance_label(*finest),
-            depth_label(self.depth(worst)),
-            self.references[worst.reference].name,
+            self.depth(worst).map_or_else(|| "the surface".into(), depth_label),
+            self.plan.series_label(self.series_of(worst)),
             distance_label(self.coarser_cell(worst).round())
         ))
     }
@@ -84,6 +114,14 @@ impl Findings {
                 list(&names)
             )
         })
+    }
+
+    /// What was odd about the mapped units, as their reader told it.
+    fn units_limits(&self) -> Vec<String> {
+        let told = |(choice, found): (&MappedUnits, &Units)| {
+            found.notes.iter().map(|note| format!("{}: {note}.", choice.name)).collect::<Vec<_>>()
+        };
+        self.plan.study.units.iter().zip(&self.units).flat_map(told).collect()
     }
 
     fn footprint_limit(&self) -> Option<String> {

@@ -1,10 +1,15 @@
 //! How it was done, in paragraphs made from what was run.
 
-use super::run::{DENSITY_PER_MAGNETISATION, Findings};
-use super::settings::PotentialKind;
+use super::answer::list;
+use super::contact_details::LADDER_CELLS;
+use super::fields::DENSITY_PER_MAGNETISATION;
+use super::plan::PlannedDirections;
+use super::run::Findings;
+use super::settings::{Angles, ContactChoice, PotentialKind, Resolution};
 use crate::coincidence::{LEAST_OVERLAP, LONGEST_SHIFT, SMALLEST_P, VALID_LEVEL};
 use crate::conductor::Threshold;
 use crate::evidence::{Method, distance_label, significant};
+use crate::field::LEAST_EXACT_INCLINATION;
 
 /// The steps of the run, each with the numbers used and its published source.
 pub(super) fn methods(findings: &Findings) -> Vec<Method> {
@@ -47,28 +52,34 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         ),
         "",
     ));
-    for (field, planned) in plan.study.potentials.iter().zip(&plan.potentials) {
-        let heights: Vec<String> = field.heights.iter().map(|height| distance_label(*height)).collect();
-        let first = match field.kind {
-            PotentialKind::Gravity | PotentialKind::Other => String::new(),
-            PotentialKind::Magnetic { inclination, declination } => format!(
-                "The anomaly was turned into pseudo-gravity with inclination {inclination}\u{b0} and declination \
-                 {declination}\u{b0} from true north ({:.2}\u{b0} from the frame's grid north), magnetisation taken along the \
-                 inducing field and {DENSITY_PER_MAGNETISATION} kg/m\u{b3} of density standing for 1 A/m, a scale that moves no contact. ",
-                declination + plan.true_north
+    for ((field, planned), found) in plan.study.potentials.iter().zip(&plan.potentials).zip(&findings.potentials) {
+        let heights = match (&field.heights, plan.study.test.resolution) {
+            (_, Resolution::Matched) => "to the resolving length of each slice (below)".to_string(),
+            (Some(heights), _) => {
+                let heights: Vec<String> = heights.iter().map(|height| distance_label(*height)).collect();
+                format!("by {}", heights.join(" and "))
+            }
+            (None, _) => format!(
+                "by nothing and, for each slice, by {} of its depth where that is at least half a cell",
+                plan.share_label()
             ),
         };
+        let first =
+            planned.directions.map_or_else(String::new, |directions| pseudo_gravity(directions, plan.true_north));
+        let ContactChoice { quantiles: (strong, weak), significance, .. } = field.contacts;
         steps.push(step(
             &format!("Contacts of {}", field.name),
             format!(
                 "{first}Gaps were filled for the transform and masked again, a plane was removed, and the grid was padded \
-                 beyond its edges. After upward continuation by {}, crests of the horizontal gradient magnitude were found \
-                 by quadratic fits in four directions of a 3 x 3 window and traced into lines: from crests above the {} \
-                 quantile of crest strength, followed down to the {} quantile; lines shorter than {} were dropped.",
-                heights.join(" and "),
-                field.contacts.0,
-                field.contacts.1,
-                distance_label(planned.least_length)
+                 beyond its edges. After upward continuation {heights}, crests of the horizontal gradient magnitude were found \
+                 by quadratic fits in four directions of a 3 x 3 window and traced into lines. A line starts at a crest above the \
+                 {strong} quantile of crest strength that noise alone would give anywhere in the layer with a chance of at most \
+                 {significance}, and is followed down to the {weak} quantile and to that chance in each cell; lines shorter than \
+                 {} were dropped. The noise of a cell, {} {} ({}), was taken as white and carried through the transforms.",
+                distance_label(planned.least_length),
+                significant(found.noise.sigma, 2),
+                field.kind.file_unit(),
+                found.noise.origin()
             ),
             match field.kind {
                 PotentialKind::Magnetic { .. } => {
@@ -76,6 +87,46 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
                 }
                 _ => "Blakely & Simpson 1986 (Geophysics 51, 1494-1498)",
             },
+        ));
+        if field.kind != PotentialKind::Other {
+            steps.push(step(
+                &format!("Depth and dip of the contacts of {}", field.name),
+                format!(
+                    "The depth of a contact is half the distance between the contours of -45\u{b0} and 45\u{b0} of the tilt angle \
+                     of the vertical derivative{}, less the height of continuation: right for a vertical contact of great depth \
+                     extent. Where heights do not belong to depths, each contact was looked for again {} cells higher; the \
+                     drift of its crest tells which way it dips where it is faster than that of a vertical-sided body.",
+                    if planned.directions.is_some() { " (which is the anomaly reduced to the pole)" } else { "" },
+                    list(&LADDER_CELLS.map(|cells| cells.to_string()))
+                ),
+                "Salem, Williams, Fairhead, Ravat & Smith 2007 (The Leading Edge 26, 1502-1505)",
+            ));
+        }
+    }
+    if plan.study.test.resolution == Resolution::Matched {
+        steps.push(step(
+            "Resolution",
+            "The resolving length of a layer is half the wavelength beyond which nine tenths of the power of its horizontal \
+             gradient lie. At each depth every field was continued upward, and the slice smoothed by a Gaussian, until their \
+             resolving lengths were that of the coarsest; conductors were picked after smoothing."
+                .into(),
+            "",
+        ));
+    }
+    let mapped = plan.study.lines.iter().map(|lines| (&lines.name, "lines"));
+    let mapped: Vec<String> = mapped
+        .chain(plan.study.units.iter().map(|units| (&units.name, "units")))
+        .map(|(name, what)| format!("{name} ({what})"))
+        .collect();
+    if !mapped.is_empty() {
+        steps.push(step(
+            "What is mapped",
+            format!(
+                "{} came from vector files, cut at the frame. A cell belongs to units if its centre lies inside; distance to them \
+                 is 0 inside, and enrichment inside is tested beside the distances.",
+                list(&mapped)
+            ),
+            "",
         ));
     }
     steps.push(step(
@@ -119,4 +170,35 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         "Bartlett 1946 (Supplement to the Journal of the Royal Statistical Society 8, 27-41); Clifford, Richardson & Hemon 1989 (Biometrics 45, 123-134)",
     ));
     steps
+}
+
+/// How magnetics became pseudo-gravity.
+fn pseudo_gravity(directions: PlannedDirections, true_north: f64) -> String {
+    let Angles { inclination, declination } = directions.field;
+    let own = match directions.magnetisation {
+        None => "magnetisation taken along the earth's field".to_string(),
+        Some(Angles { inclination, declination }) => format!(
+            "magnetisation taken along inclination {}\u{b0} and declination {}\u{b0} from true north",
+            significant(inclination, 4),
+            significant(declination, 4)
+        ),
+    };
+    let steep = directions.magnetisation.map_or(inclination.abs(), |own| own.inclination.abs().min(inclination.abs()));
+    let guard = if steep < LEAST_EXACT_INCLINATION {
+        format!(
+            " Where a direction is less steep than {LEAST_EXACT_INCLINATION}\u{b0}, the amplitude of the operator is that of \
+             {LEAST_EXACT_INCLINATION}\u{b0}, so that waves along the declination are not magnified without bound (MacLeod, \
+             Jordan & Li 1993)."
+        )
+    } else {
+        String::new()
+    };
+    format!(
+        "The anomaly was turned into pseudo-gravity with inclination {}\u{b0} and declination {}\u{b0} from true north \
+         ({}\u{b0} from the frame's grid north), {own} and {DENSITY_PER_MAGNETISATION} kg/m\u{b3} of density standing for \
+         1 A/m, a scale that moves no contact.{guard} ",
+        significant(inclination, 4),
+        significant(declination, 4),
+        significant(declination + true_north, 4)
+    )
 }

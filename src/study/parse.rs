@@ -5,24 +5,26 @@ use std::path::{Path, PathBuf};
 
 use toml::Spanned;
 
-use super::schema::{BodyKeys, ConductivityKeys, ContactKeys, PotentialKeys, StudyKeys, TestKeys};
+use super::schema::{BodyKeys, ConductivityKeys, StudyKeys, TestKeys};
 use super::settings::{
-    BodyChoice, Conductivity, Deposits, FrameChoice, MappedLines, Model, Potential, PotentialKind, SliceChoice, Study,
-    TestChoice,
+    BodyChoice, Conductivity, Deposits, FrameChoice, MappedUnits, Model, Resolution, SliceChoice, Study, TestChoice,
+    UnitRole,
 };
 use crate::coincidence::SMALLEST_P;
 use crate::conductor::{Quantity, Threshold};
-use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
-use crate::evidence::file_stem;
-use crate::field::InducingField;
-use crate::grid::{LineSource, Source};
+use crate::grid::Source;
 
 /// The seed of a study that names none.
 pub const DEFAULT_SEED: u64 = 1;
 
 /// The level of the family when the study names none (common practice, no source).
 pub const DEFAULT_LEVEL: f64 = 0.05;
+
+/// Height of upward continuation over depth of a slice, where a field lists no heights: a field continued upward by h shows
+/// mostly sources below h / 2 (Jacobsen 1987, Geophysics 52, 1138-1148), but a body that reaches a depth d shows its margin
+/// from its top on, so that less than 2 d is wanted; a half is common practice, no source.
+pub const DEFAULT_HEIGHT_PER_DEPTH: f64 = 0.5;
 
 impl Study {
     /// Reads and checks a study file. No layer is opened yet.
@@ -58,17 +60,17 @@ impl Study {
 }
 
 /// The file that is being read, to name lines in messages.
-struct Place<'a> {
+pub(super) struct Place<'a> {
     text: &'a str,
-    path: &'a Path,
+    pub(super) path: &'a Path,
 }
 
 impl Place<'_> {
-    fn error(&self, thing: impl Into<String>) -> Error {
+    pub(super) fn error(&self, thing: impl Into<String>) -> Error {
         Error::input(thing).file(self.path)
     }
 
-    fn at(&self, thing: impl Into<String>, span: Range<usize>) -> Error {
+    pub(super) fn at(&self, thing: impl Into<String>, span: Range<usize>) -> Error {
         self.error(thing).line(self.line(span.start))
     }
 
@@ -122,30 +124,31 @@ impl Place<'_> {
         if keys.title.trim().is_empty() {
             return Err(self.error("title").found("an empty text").wanted("a title for the page"));
         }
-        if keys.potential.is_empty() && keys.lines.is_empty() {
+        let units = keys.units.into_iter().map(|keys| (keys.name.clone(), self.units(keys)));
+        let (unit_names, units): (Vec<_>, Vec<_>) = units.unzip();
+        let units = units.into_iter().collect::<Result<Vec<MappedUnits>>>()?;
+        let stays = units.iter().any(|units| units.role == UnitRole::Reference);
+        if keys.potential.is_empty() && keys.lines.is_empty() && !stays {
             return Err(self
                 .error("the study")
-                .found("no [[potential]] and no [[lines]]")
+                .found("no [[potential]], no [[lines]] and no [[units]] that stay")
                 .wanted("at least one reference to test the conductors against")
                 .mend("add a [[potential]] with name and path"));
         }
+        let names = keys.potential.iter().map(|keys| keys.name.clone());
+        let names = names.chain(keys.lines.iter().map(|keys| keys.name.clone())).chain(unit_names);
+        let names: Vec<Spanned<String>> = names.collect();
         let potentials = keys.potential.into_iter().map(|keys| self.potential(keys)).collect::<Result<Vec<_>>>()?;
-        let mut lines = Vec::new();
-        for keys in keys.lines {
-            let name = self.name("the name of a [[lines]]", &keys.name)?;
-            let stem = file_stem(&name);
-            if potentials.iter().any(|(other, _)| file_stem(&other.name) == stem)
-                || lines.iter().any(|other: &MappedLines| file_stem(&other.name) == stem)
-            {
-                return Err(self.twice(&keys.name));
-            }
-            let source = LineSource { path: self.join(&keys.path), layer: keys.layer, crs: keys.crs };
-            lines.push(MappedLines { name, source });
-        }
-        for (index, (potential, span)) in potentials.iter().enumerate() {
-            if potentials[..index].iter().any(|(other, _)| file_stem(&other.name) == file_stem(&potential.name)) {
-                return Err(self.twice(&Spanned::new(span.clone(), potential.name.clone())));
-            }
+        let lines = keys.lines.into_iter().map(|keys| self.lines(keys)).collect::<Result<Vec<_>>>()?;
+        self.refuse_twins(&names)?;
+        let test = self.test(&keys.test)?;
+        let listed = potentials.iter().find(|field| field.heights.is_some());
+        if let (Resolution::Matched, Some(field)) = (test.resolution, listed) {
+            return Err(self
+                .error(format!("potential {:?}", field.name))
+                .found("heights beside test.resolution = \"matched\"")
+                .wanted("one of them, since matching finds the height of each slice")
+                .mend("take heights out, or write resolution = \"as-is\""));
         }
         let cell = keys.frame.cell.as_ref().map(|cell| self.positive("frame.cell", "metres", cell)).transpose()?;
         Ok(Study {
@@ -154,14 +157,15 @@ impl Place<'_> {
             seed: self.seed(keys.seed)?,
             frame: FrameChoice { crs: keys.frame.crs.map(Spanned::into_inner), cell },
             conductivity: self.conductivity(keys.conductivity)?,
-            potentials: potentials.into_iter().map(|(potential, _)| potential).collect(),
+            potentials,
             lines,
+            units,
             deposits: keys.deposits.map(|keys| Deposits {
                 path: self.join(&keys.path),
                 crs: keys.crs,
                 columns: keys.columns.map(|columns| [columns.x, columns.y, columns.name]),
             }),
-            test: self.test(&keys.test)?,
+            test,
         })
     }
 
@@ -256,7 +260,7 @@ impl Place<'_> {
         }
     }
 
-    fn band(&self, band: Option<usize>) -> Result<usize> {
+    pub(super) fn band(&self, band: Option<usize>) -> Result<usize> {
         match band {
             Some(0) => Err(self.error("band").found("0").wanted("1 for the first band")),
             band => Ok(band.unwrap_or(1)),
@@ -301,92 +305,6 @@ impl Place<'_> {
             None => None,
         };
         Ok(BodyChoice { threshold, least_area })
-    }
-
-    fn potential(&self, keys: PotentialKeys) -> Result<(Potential, Range<usize>)> {
-        let name = self.name("the name of a [[potential]]", &keys.name)?;
-        let kind_name = keys.kind.as_ref().map_or("gravity", |kind| kind.get_ref());
-        let kind = match kind_name {
-            "gravity" => PotentialKind::Gravity,
-            "other" => PotentialKind::Other,
-            "magnetic" => {
-                let angle = |key: &str, angle: &Option<Spanned<f64>>, most: f64| match angle {
-                    None => Err(self
-                        .at(format!("potential {name:?}"), keys.name.span())
-                        .found(format!("no {key}"))
-                        .wanted("inclination and declination in degrees, since contacts are picked on pseudo-gravity")
-                        .mend(format!("add {key} = ... for the place and date of the survey"))),
-                    Some(angle) if !(-most..=most).contains(angle.get_ref()) => Err(self
-                        .at(key, angle.span())
-                        .found(angle.get_ref())
-                        .wanted(format!("degrees from -{most} to {most}"))),
-                    Some(angle) => Ok(*angle.get_ref()),
-                };
-                let inclination = angle("inclination", &keys.inclination, 90.0)?;
-                // The frame's own north comes later and is small; 180 keeps the sum inside what the transform takes.
-                let declination = angle("declination", &keys.declination, 180.0)?;
-                InducingField::new(inclination, declination).map_err(|error| error.file(self.path))?;
-                PotentialKind::Magnetic { inclination, declination }
-            }
-            other => {
-                let error = match &keys.kind {
-                    Some(kind) => self.at("kind", kind.span()),
-                    None => self.error("kind"),
-                };
-                return Err(error.found(format!("{other:?}")).wanted("one of: gravity, magnetic, other"));
-            }
-        };
-        let mut heights: Vec<f64> = Vec::new();
-        for height in keys.heights.unwrap_or_default() {
-            let value = *height.get_ref();
-            if !(value.is_finite() && value >= 0.0) || heights.contains(&value) {
-                return Err(self
-                    .at("heights", height.span())
-                    .found(value)
-                    .wanted("each height once, in metres, zero or more: continuation goes upward"));
-            }
-            heights.push(value);
-        }
-        if heights.is_empty() {
-            heights.push(0.0);
-        }
-        Ok((
-            Potential {
-                source: Source { path: self.join(&keys.path), variable: keys.variable, crs: keys.crs },
-                band: self.band(keys.band)?,
-                kind,
-                heights,
-                contacts: self.contacts(&keys.contacts)?,
-                least_length: match &keys.contacts.least_length {
-                    Some(length) => Some(self.positive("contacts.least_length", "metres", length)?),
-                    None => None,
-                },
-                name,
-            },
-            keys.name.span(),
-        ))
-    }
-
-    /// The strengths at which contacts start and end; their least length needs the frame and is set later.
-    fn contacts(&self, keys: &ContactKeys) -> Result<(f64, f64)> {
-        let default = ContactSettings::default();
-        let share = |key: &str, value: &Option<Spanned<f64>>, default: f64| match value {
-            None => Ok(default),
-            Some(value) if (0.0..=1.0).contains(value.get_ref()) => Ok(*value.get_ref()),
-            Some(value) => Err(self
-                .at(format!("contacts.{key}"), value.span())
-                .found(value.get_ref())
-                .wanted("a share of the crests' strengths, from 0 to 1")),
-        };
-        let strong = share("strong", &keys.strong, default.strong())?;
-        let weak = share("weak", &keys.weak, default.weak().min(strong))?;
-        if weak > strong {
-            return Err(self
-                .error("contacts")
-                .found(format!("weak = {weak} above strong = {strong}"))
-                .wanted("weak no larger than strong"));
-        }
-        Ok((strong, weak))
     }
 
     fn test(&self, keys: &TestKeys) -> Result<TestChoice> {
@@ -435,10 +353,25 @@ impl Place<'_> {
                 None => None,
             },
             level,
+            height_per_depth: match &keys.height_per_depth {
+                None => DEFAULT_HEIGHT_PER_DEPTH,
+                Some(share) => self.positive("test.height_per_depth", "metres up for a metre of depth", share)?,
+            },
+            resolution: match &keys.resolution {
+                None => Resolution::AsIs,
+                Some(choice) => [Resolution::AsIs, Resolution::Matched]
+                    .into_iter()
+                    .find(|known| known.name() == choice.get_ref())
+                    .ok_or_else(|| {
+                        self.at("test.resolution", choice.span())
+                            .found(format!("{:?}", choice.get_ref()))
+                            .wanted("one of: as-is, matched")
+                    })?,
+            },
         })
     }
 
-    fn positive(&self, key: &str, unit: &str, value: &Spanned<f64>) -> Result<f64> {
+    pub(super) fn positive(&self, key: &str, unit: &str, value: &Spanned<f64>) -> Result<f64> {
         let number = *value.get_ref();
         if number.is_finite() && number > 0.0 {
             return Ok(number);
@@ -447,7 +380,7 @@ impl Place<'_> {
     }
 
     /// Names stand in tables, on the page and in file names, so they are short, single-line texts.
-    fn name(&self, thing: &str, name: &Spanned<String>) -> Result<String> {
+    pub(super) fn name(&self, thing: &str, name: &Spanned<String>) -> Result<String> {
         let text = name.get_ref().trim();
         if text.is_empty() || text.chars().count() > 60 || text.chars().any(char::is_control) {
             return Err(self
@@ -458,14 +391,7 @@ impl Place<'_> {
         Ok(text.to_string())
     }
 
-    fn twice(&self, name: &Spanned<String>) -> Error {
-        self.at("a name", name.span())
-            .found(format!("{:?} a second time", name.get_ref()))
-            .wanted("names that differ in more than signs, since they stand in file names")
-            .mend("give one of them another name")
-    }
-
-    fn join(&self, path: &Path) -> PathBuf {
+    pub(super) fn join(&self, path: &Path) -> PathBuf {
         match self.path.parent() {
             Some(folder) => folder.join(path),
             None => path.to_path_buf(),

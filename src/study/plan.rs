@@ -5,9 +5,12 @@ use std::path::PathBuf;
 
 use super::frame_choice::{choose_cell, choose_crs, choose_extent, profile_ladder, refuse_distortion};
 use super::seen::{Seen, see_slices};
-use super::settings::{PotentialKind, Study};
+use super::series::Series;
+use super::settings::{Angles, ContactChoice, FieldDirection, Potential, PotentialKind, Study, UnitRole};
+use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
-use crate::grid::{Frame, Resampler, Source, files_of_vector, true_north};
+use crate::field::{LEAST_EXACT_INCLINATION, ReferenceField, reference_field};
+use crate::grid::{Crs, Frame, Resampler, Source, carry, files_of_vector, true_north};
 
 /// The most cells that a potential field may use beyond the frame, so that its edges fall outside.
 const MOST_RING: usize = 64;
@@ -80,6 +83,52 @@ pub struct PlannedPotential {
     pub ring: usize,
     /// Least length of a contact, m.
     pub least_length: f64,
+    /// Directions of field and magnetisation, from true north; `None` for what is not magnetic.
+    pub directions: Option<PlannedDirections>,
+}
+
+/// Directions behind a magnetic anomaly.
+#[derive(Debug, Clone, Copy)]
+pub struct PlannedDirections {
+    /// The earth's field, as given or from the reference model.
+    pub field: Angles,
+    /// The magnetisation, where it does not run along the field.
+    pub magnetisation: Option<Angles>,
+}
+
+impl PlannedDirections {
+    /// Settles the directions of a field; `None` for what is not magnetic.
+    fn of(field: &Potential, frame: &Frame, reasons: &mut Vec<String>) -> Result<Option<Self>> {
+        let PotentialKind::Magnetic { field: direction, magnetisation } = field.kind else { return Ok(None) };
+        let field = match direction {
+            FieldDirection::Given(angles) => angles,
+            FieldDirection::Year(year) => {
+                let middle = ((frame.west + frame.east()) / 2.0, (frame.south() + frame.north) / 2.0);
+                let (longitude, latitude) = carry(&[middle], &frame.crs, &Crs::from_definition("EPSG:4326")?)?[0];
+                let found = reference_field(longitude, latitude, 0.0, year)?;
+                reasons.push(format!(
+                    "The earth's field under {} is that of {} at the frame's middle in {year}.",
+                    field.name,
+                    ReferenceField::MODEL
+                ));
+                Angles { inclination: found.inclination, declination: found.declination }
+            }
+        };
+        Ok(Some(Self { field, magnetisation }))
+    }
+}
+
+impl PlannedPotential {
+    /// The shallower of field and magnetisation, where its inclination is below the guard of the transforms.
+    pub(super) fn shallow_direction(&self) -> Option<Angles> {
+        let PlannedDirections { field, magnetisation } = self.directions?;
+        let shallow = |angles: &Angles| angles.inclination.abs() < LEAST_EXACT_INCLINATION;
+        [Some(field), magnetisation]
+            .into_iter()
+            .flatten()
+            .filter(shallow)
+            .min_by(|a, b| a.inclination.abs().total_cmp(&b.inclination.abs()))
+    }
 }
 
 impl Plan {
@@ -121,13 +170,15 @@ impl Plan {
             Ok(PlannedPotential {
                 layer: seen.planned(&frame)?,
                 ring: ((room / cell).floor().max(0.0) as usize).min(MOST_RING),
-                least_length: field.least_length.unwrap_or(5.0 * cell),
+                least_length: field.contacts.least_length.unwrap_or(5.0 * cell),
+                directions: PlannedDirections::of(field, &frame, &mut reasons).map_err(at_study)?,
             })
         });
+        let planned_potentials = planned_potentials.collect::<Result<_>>()?;
         let area = |choice: Option<f64>| choice.unwrap_or(4.0 * frame.cell_area());
         Ok(Self {
             slices: planned_slices.collect::<Result<_>>()?,
-            potentials: planned_potentials.collect::<Result<_>>()?,
+            potentials: planned_potentials,
             distance_cap: study.test.distance_cap.unwrap_or(8.0 * cell),
             conductor_area: area(study.conductivity.conductors.least_area),
             resistor_area: area(study.conductivity.resistors.as_ref().and_then(|choice| choice.least_area)),
@@ -147,26 +198,52 @@ impl Plan {
         ladder.fold(self.distance_cap, f64::max) + self.frame.cell
     }
 
-    /// How many references the conductors are tested against: each potential field at each height, and each line set.
+    /// How many layers the subjects are tested against.
     pub fn references(&self) -> usize {
-        self.study.potentials.iter().map(|field| field.heights.len()).sum::<usize>() + self.study.lines.len()
+        self.series().into_iter().map(|series| self.layers_of(series)).sum()
     }
 
     /// How many tests the family holds at most.
     pub fn family_tests(&self) -> usize {
-        let sides = 1 + usize::from(self.study.conductivity.resistors.is_some());
-        let fields = self.references() - self.study.lines.len();
-        self.slices.len() * (self.references() * sides * self.within.len() + fields)
+        let tests = |series: Series| {
+            let distances = self.within.len() + usize::from(series.is_area());
+            let bodies = self.slices_met(series).len() * (self.sides() * distances + usize::from(series.is_field()));
+            bodies + self.moved_units(series) * distances
+        };
+        self.series().into_iter().map(tests).sum()
     }
 
-    /// How many sums over every shift the comparison takes: for each slice, side and reference one for each distance, the
+    /// How many sums over every shift the comparison takes: for each subject and reference one for each distance, the
     /// subject's own cells and the mean distance; for each slice and field three for the correlation; and what they share.
     pub fn sums(&self) -> usize {
-        let sides = 1 + usize::from(self.study.conductivity.resistors.is_some());
         let ladder = self.within.len() + self.profile.iter().filter(|far| !self.within.contains(far)).count();
-        let fields = self.references() - self.study.lines.len();
-        let shared = self.references() * (ladder + 2) + 2 * fields;
-        self.slices.len() * (self.references() * sides * (ladder + 2) + 3 * fields) + shared
+        let sums = |series: Series| {
+            let distances = ladder + usize::from(series.is_area()) + 2;
+            let field = usize::from(series.is_field());
+            let bodies = self.slices_met(series).len() * (self.sides() * distances + 3 * field);
+            bodies + self.moved_units(series) * distances + self.layers_of(series) * (distances + 2 * field)
+        };
+        self.series().into_iter().map(sums).sum()
+    }
+
+    /// Conductors alone, or resistors too.
+    fn sides(&self) -> usize {
+        1 + usize::from(self.study.conductivity.resistors.is_some())
+    }
+
+    /// How many units that are moved meet a series.
+    fn moved_units(&self, series: Series) -> usize {
+        let moved = self.study.units.iter().filter(|units| units.role == UnitRole::Subject).count();
+        if series.meets_units() { moved } else { 0 }
+    }
+
+    /// The settings under which the contacts of a field are found.
+    ///
+    /// # Errors
+    /// None that a checked study can cause.
+    pub fn contact_settings(&self, potential: usize) -> Result<ContactSettings> {
+        let ContactChoice { quantiles: (strong, weak), significance, .. } = self.study.potentials[potential].contacts;
+        ContactSettings::new(strong, weak, self.potentials[potential].least_length)?.with_significance(significance)
     }
 
     /// Memory that the run will take at most, in bytes: an estimate from the sizes of layers and spectra.
@@ -221,27 +298,37 @@ impl Plan {
         for (field, planned) in self.study.potentials.iter().zip(&self.potentials) {
             layer(format!("{} ({})", field.name, field.kind.name()), &planned.layer);
         }
-        for field in &self.study.potentials {
-            if let PotentialKind::Magnetic { inclination, declination } = field.kind {
-                let _ = writeln!(
-                    text,
-                    "  {:<24} inclination {inclination}, declination {declination} from true north, {:.2} from grid north",
-                    "",
-                    declination + self.true_north
-                );
+        for (field, planned) in self.study.potentials.iter().zip(&self.potentials) {
+            if let Some(directions) = planned.directions {
+                let mut direction = |of: &str, Angles { inclination, declination }: Angles| {
+                    let _ = writeln!(
+                        text,
+                        "  {:<24} {of} inclination {inclination:.2}, declination {declination:.2} from true north, {:.2} from grid north",
+                        field.name,
+                        declination + self.true_north
+                    );
+                };
+                direction("field:", directions.field);
+                if let Some(own) = directions.magnetisation {
+                    direction("magnetisation:", own);
+                }
             }
         }
         for lines in &self.study.lines {
             let _ = writeln!(text, "  {:<24} {}", format!("{} (lines)", lines.name), lines.source.path.display());
+        }
+        for units in &self.study.units {
+            let name = format!("{} (units, {})", units.name, units.role.name());
+            let _ = writeln!(text, "  {name:<24} {}", units.source.path.display());
         }
         let distances: Vec<String> = self.within.iter().map(|within| format!("{within}")).collect();
         let _ = writeln!(text, "\nTests:");
         let sides = if self.study.conductivity.resistors.is_some() { "conductors and resistors" } else { "conductors" };
         let _ = writeln!(
             text,
-            "  {sides} at {} depths against {} references: enrichment within {} m, and correlation;",
+            "  {sides} at {} depths against {}: enrichment within {} m, and correlation;",
             self.slices.len(),
-            self.references(),
+            self.series().into_iter().map(|series| self.series_label(series)).collect::<Vec<_>>().join(", "),
             distances.join(", ")
         );
         let _ = writeln!(
@@ -269,9 +356,11 @@ impl Plan {
         let mut files: Vec<PathBuf> = Vec::new();
         let slices = self.slices.iter().flat_map(|slice| slice.layer.files.clone());
         let potentials = self.potentials.iter().flat_map(|field| field.layer.files.clone());
-        let lines = self.study.lines.iter().flat_map(|lines| files_of_vector(&lines.source.path));
+        let lines = self.study.lines.iter().map(|lines| &lines.source.path);
+        let units = self.study.units.iter().map(|units| &units.source.path);
+        let vectors = lines.chain(units).flat_map(|path| files_of_vector(path));
         let deposits = self.study.deposits.iter().map(|deposits| deposits.path.clone());
-        for path in slices.chain(potentials).chain(lines).chain(deposits) {
+        for path in slices.chain(potentials).chain(vectors).chain(deposits) {
             if !files.contains(&path) {
                 files.push(path);
             }

@@ -8,7 +8,8 @@ use super::answer::{capital, list};
 use super::methods::methods;
 use super::plan::Plan;
 use super::progress::Progress;
-use super::run::{Findings, run};
+use super::run::{Findings, SubjectFinding, run};
+use super::series::Series;
 use super::settings::Study;
 use crate::coincidence::{Test, Verdict};
 use crate::conductor::{Side, outlines};
@@ -115,13 +116,17 @@ impl Findings {
 
     /// The depth with the highest score of a conductor test, which the page shows first.
     fn first_depth(&self) -> usize {
-        let conductors = self.comparison.tests.iter().filter(|t| t.tested && self.side(t) == Side::Conductor);
+        let conductors = self.comparison.tests.iter().filter(|t| t.tested && self.side(t) == Some(Side::Conductor));
         let best = conductors.filter(|t| t.p_family.is_some()).max_by(|a, b| a.score.total_cmp(&b.score));
-        best.map_or(0, |test| self.subjects[test.subject].0)
+        match best.map(|test| self.subjects[test.subject]) {
+            Some(SubjectFinding::Bodies { slice, .. }) => slice,
+            _ => 0,
+        }
     }
 
     fn panel(&self, depth: f64, map: crate::evidence::Figure) -> DepthPanel {
-        let here = |test: &&Test| self.depth(test) == depth && test.tested && self.side(test) == Side::Conductor;
+        let conductors = |test: &Test| self.depth(test) == Some(depth) && self.side(test) == Some(Side::Conductor);
+        let here = |test: &&Test| conductors(test) && test.tested;
         let tests: Vec<&Test> = self.comparison.tests.iter().filter(here).collect();
         let mut facts = Vec::new();
         if let Some(slice) = self.slices.iter().find(|slice| slice.depth == depth) {
@@ -135,22 +140,20 @@ impl Findings {
             ));
             facts.push(("threshold".into(), format!("below {} \u{3a9} m", significant(threshold, 3))));
         }
-        for reference in 0..self.references.len() {
-            let within = self.telling_distance(reference, Side::Conductor);
-            let at = tests.iter().find(|t| t.reference == reference && t.measure.within() == Some(within));
+        for series in self.series.iter().copied() {
+            let within = self.telling_distance(series, Side::Conductor);
+            let at = tests.iter().find(|t| self.series_of(t) == series && t.measure.within() == Some(within));
             if let Some(test) = at {
                 let value = match test.p_family {
                     Some(p) => format!("{} \u{d7} ({})", significant(test.effect, 3), self.p_label(test, p)),
                     None => "cannot tell".into(),
                 };
-                let label = format!("within {} of {}", distance_label(within), self.reference_label(reference));
-                facts.push((label, value));
+                facts.push((self.plan.near_label(series, within), value));
             }
         }
-        let mut verdicts: Vec<String> =
-            (0..self.references.len()).flat_map(|reference| self.verdicts(reference, &tests)).collect();
+        let mut verdicts: Vec<String> = self.series.iter().flat_map(|series| self.verdicts(*series, &tests)).collect();
         if verdicts.is_empty() {
-            let told = self.told(|test| self.depth(test) == depth && self.side(test) == Side::Conductor);
+            let told = self.told(conductors);
             verdicts.push(
                 if told { "Nothing shown beyond chance at this depth." } else { "At this depth the data cannot tell." }
                     .into(),
@@ -167,12 +170,13 @@ impl Findings {
     }
 
     /// What was found against one reference at one depth: a sentence for each verdict worth one.
-    fn verdicts(&self, reference: usize, tests: &[&Test]) -> Vec<String> {
-        let label = self.reference_label(reference);
+    fn verdicts(&self, series: Series, tests: &[&Test]) -> Vec<String> {
+        let label = self.plan.series_label(series);
         let told = |verdict: Verdict| {
-            let found = tests.iter().filter(|test| test.reference == reference && test.verdict == verdict);
+            let found = tests.iter().filter(|test| self.series_of(test) == series && test.verdict == verdict);
             let what: Vec<String> = found
                 .map(|test| match test.measure.within() {
+                    Some(0.0) => "inside".to_string(),
                     Some(within) => format!("within {}", distance_label(within)),
                     None => test.measure.words().to_string(),
                 })
@@ -223,22 +227,26 @@ impl Findings {
             write_raster(&path, &slice.placed.grid, &title, "log10 ohm m")?;
         }
         for reference in &self.references {
-            let stem = file_stem(&reference.name);
-            if let (Some(strength), Some(height), Some(index)) =
-                (&reference.strength, reference.height, reference.potential)
-            {
-                let unit = format!("{} per metre", self.plan.study.potentials[index].kind.unit());
-                let title = format!("horizontal gradient of {} at height {height} m", reference.name);
-                write_raster(&gis.join(format!("{stem}_gradient_{height}.tif")), strength, &title, &unit)?;
+            let potential = self.series[reference.series].potential();
+            if let (Some(strength), Some(height), Some(index)) = (&reference.strength, reference.height, potential) {
+                let field = &self.plan.study.potentials[index];
+                let unit = format!("{} per metre", field.kind.unit());
+                let title = format!("horizontal gradient of {} at height {} m", field.name, height.round());
+                let at = match reference.slice {
+                    Some(slice) => format!("for_{}", self.slices[slice].depth),
+                    None => height.to_string(),
+                };
+                let path = gis.join(format!("{}_gradient_{at}.tif", file_stem(&field.name)));
+                write_raster(&path, strength, &title, &unit)?;
             }
         }
-        for (field, placed) in self.plan.study.potentials.iter().zip(&self.potentials) {
+        for (field, found) in self.plan.study.potentials.iter().zip(&self.potentials) {
             let unit = match field.kind {
                 super::settings::PotentialKind::Magnetic { .. } => "nT",
                 kind => kind.unit(),
             };
             let path = gis.join(format!("{}_field.tif", file_stem(&field.name)));
-            write_raster(&path, &placed.grid, &format!("{} on the frame", field.name), unit)?;
+            write_raster(&path, &found.placed.grid, &format!("{} on the frame", field.name), unit)?;
         }
         Ok(())
     }

@@ -18,6 +18,8 @@ pub(super) struct StudyKeys {
     pub potential: Vec<PotentialKeys>,
     #[serde(default)]
     pub lines: Vec<LinesKeys>,
+    #[serde(default)]
+    pub units: Vec<UnitsKeys>,
     /// Part of the study's contract, refused until controls can be taken out.
     pub control: Option<Spanned<toml::Value>>,
     pub deposits: Option<DepositsKeys>,
@@ -85,8 +87,19 @@ pub(super) struct PotentialKeys {
     pub heights: Option<Vec<Spanned<f64>>>,
     pub inclination: Option<Spanned<f64>>,
     pub declination: Option<Spanned<f64>>,
+    pub year: Option<Spanned<f64>>,
+    pub magnetisation: Option<MagnetisationKeys>,
+    pub noise: Option<Spanned<f64>>,
     #[serde(default)]
     pub contacts: ContactKeys,
+}
+
+/// `magnetisation` of a magnetic field, where it does not run along the inducing field.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(super) struct MagnetisationKeys {
+    pub inclination: Spanned<f64>,
+    pub declination: Spanned<f64>,
 }
 
 /// `contacts` of a potential field.
@@ -96,6 +109,7 @@ pub(super) struct ContactKeys {
     pub strong: Option<Spanned<f64>>,
     pub weak: Option<Spanned<f64>>,
     pub least_length: Option<Spanned<f64>>,
+    pub significance: Option<Spanned<f64>>,
 }
 
 /// `[[lines]]`.
@@ -106,6 +120,40 @@ pub(super) struct LinesKeys {
     pub path: PathBuf,
     pub layer: Option<String>,
     pub crs: Option<String>,
+    pub keep: Option<Spanned<KeepKeys>>,
+}
+
+/// `[[units]]`.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(super) struct UnitsKeys {
+    pub name: Spanned<String>,
+    pub path: PathBuf,
+    pub layer: Option<String>,
+    pub crs: Option<String>,
+    pub keep: Option<Spanned<KeepKeys>>,
+    pub role: Option<Spanned<String>>,
+}
+
+/// `keep` of a vector file: which of its features count, by what a column holds.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(super) struct KeepKeys {
+    pub column: String,
+    #[serde(default)]
+    pub is: Vec<ValueKey>,
+    #[serde(default)]
+    pub not: Vec<ValueKey>,
+}
+
+/// A value of a column: a text, a number, or true or false.
+#[derive(Debug, Deserialize)]
+#[serde(untagged)]
+pub(super) enum ValueKey {
+    Text(String),
+    Whole(i64),
+    Number(f64),
+    Truth(bool),
 }
 
 /// `[deposits]`.
@@ -135,4 +183,6 @@ pub(super) struct TestKeys {
     pub distance_cap: Option<Spanned<f64>>,
     pub null: Option<Spanned<String>>,
     pub family: Option<Spanned<f64>>,
+    pub height_per_depth: Option<Spanned<f64>>,
+    pub resolution: Option<Spanned<String>>,
 }

@@ -3,7 +3,7 @@
 use std::path::PathBuf;
 
 use crate::conductor::{Quantity, Threshold};
-use crate::grid::{LineSource, Source};
+use crate::grid::{Source, VectorSource};
 
 /// A study whose every value has been checked; the layers have not been opened yet.
 #[derive(Debug, Clone)]
@@ -22,6 +22,8 @@ pub struct Study {
     pub potentials: Vec<Potential>,
     /// Mapped lines that are references.
     pub lines: Vec<MappedLines>,
+    /// Mapped units that are references, subjects or both.
+    pub units: Vec<MappedUnits>,
     /// Known deposits, drawn on the maps.
     pub deposits: Option<Deposits>,
     /// Distances and level of the test.
@@ -95,10 +97,22 @@ pub struct Potential {
     pub band: usize,
     /// What it measures.
     pub kind: PotentialKind,
-    /// Heights of upward continuation at which contacts are picked, m.
-    pub heights: Vec<f64>,
+    /// Heights of upward continuation at which contacts are picked, m, for every slice; `None` picks them on the field as it
+    /// is and, for each slice, at a height tied to its depth.
+    pub heights: Option<Vec<f64>>,
+    /// Standard deviation of the noise of one cell, in units of the field; `None` is estimated.
+    pub noise: Option<f64>,
+    /// What counts as a contact.
+    pub contacts: ContactChoice,
+}
+
+/// What counts as a contact.
+#[derive(Debug, Clone, Copy)]
+pub struct ContactChoice {
     /// Quantiles of the crests' strengths at which a contact starts (strong) and ends (weak).
-    pub contacts: (f64, f64),
+    pub quantiles: (f64, f64),
+    /// The chance that noise alone gives a layer any contact at all.
+    pub significance: f64,
     /// The least length of a contact, m; `None` is five cells of the frame.
     pub least_length: Option<f64>,
 }
@@ -110,13 +124,31 @@ pub enum PotentialKind {
     Gravity,
     /// Total-field magnetic anomaly, nT; contacts are picked on its pseudo-gravity.
     Magnetic {
-        /// Inclination of the inducing field in degrees, positive down.
-        inclination: f64,
-        /// Declination in degrees, positive east of true north, as reference models give it.
-        declination: f64,
+        /// The direction of the earth's field.
+        field: FieldDirection,
+        /// The direction of the magnetisation, where it does not run along the field.
+        magnetisation: Option<Angles>,
     },
     /// Any grid whose gradient marks margins.
     Other,
+}
+
+/// A direction in space.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Angles {
+    /// Degrees, positive down.
+    pub inclination: f64,
+    /// Degrees, positive east of true north, as reference models give it.
+    pub declination: f64,
+}
+
+/// How the direction of the earth's field is known.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum FieldDirection {
+    /// The study gives it.
+    Given(Angles),
+    /// By the decimal year of the survey, from the reference model at the middle of the frame.
+    Year(f64),
 }
 
 impl PotentialKind {
@@ -126,6 +158,15 @@ impl PotentialKind {
             Self::Gravity => "gravity",
             Self::Magnetic { .. } => "magnetic",
             Self::Other => "other",
+        }
+    }
+
+    /// Unit of the values in the file.
+    pub fn file_unit(self) -> &'static str {
+        match self {
+            Self::Gravity => "mGal",
+            Self::Magnetic { .. } => "nT",
+            Self::Other => "units of the grid",
         }
     }
 
@@ -145,7 +186,37 @@ pub struct MappedLines {
     /// Their name in tables and on the page.
     pub name: String,
     /// The vector file and what to read of it.
-    pub source: LineSource,
+    pub source: VectorSource,
+}
+
+/// Mapped units: the ground of a rock, a suite, an age.
+#[derive(Debug, Clone)]
+pub struct MappedUnits {
+    /// Their name in tables and on the page.
+    pub name: String,
+    /// The vector file and what to read of it.
+    pub source: VectorSource,
+    /// What they are in the comparison.
+    pub role: UnitRole,
+}
+
+/// What mapped units are in the comparison.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum UnitRole {
+    /// The pattern that stays: conductors are moved over them.
+    Reference,
+    /// The pattern that is moved, over contacts, mapped lines and other units.
+    Subject,
+}
+
+impl UnitRole {
+    /// Name in the study file.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Reference => "reference",
+            Self::Subject => "subject",
+        }
+    }
 }
 
 /// Known deposits.
@@ -170,4 +241,27 @@ pub struct TestChoice {
     pub distance_cap: Option<f64>,
     /// The level at which the family is judged.
     pub level: f64,
+    /// Height of upward continuation over depth of the slice, where a field lists no heights.
+    pub height_per_depth: f64,
+    /// Whether layers are brought to one resolving length.
+    pub resolution: Resolution,
+}
+
+/// What is done about layers that resolve unlike detail.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Resolution {
+    /// Nothing: each field is taken at the heights named, or at those tied to depth.
+    AsIs,
+    /// At each depth the fields are continued upward, and the slice is smoothed, to the resolving length of the coarsest.
+    Matched,
+}
+
+impl Resolution {
+    /// Name in the study file.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::AsIs => "as-is",
+            Self::Matched => "matched",
+        }
+    }
 }

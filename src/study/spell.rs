@@ -3,8 +3,9 @@
 use toml::{Table, Value};
 
 use super::plan::{Plan, PlannedLayer};
-use super::settings::{BodyChoice, PotentialKind};
+use super::settings::{Angles, BodyChoice};
 use crate::conductor::Threshold;
+use crate::grid::VectorSource;
 
 impl Plan {
     /// The study as TOML text that means the same as the user's file, with nothing left to a default.
@@ -37,29 +38,41 @@ impl Plan {
             let mut keys = self.layer(&planned.layer);
             keys.insert("name".into(), field.name.clone().into());
             keys.insert("kind".into(), field.kind.name().into());
-            keys.insert("heights".into(), numbers(&field.heights));
-            if let PotentialKind::Magnetic { inclination, declination } = field.kind {
-                keys.insert("inclination".into(), inclination.into());
-                keys.insert("declination".into(), declination.into());
+            if let Some(heights) = &field.heights {
+                keys.insert("heights".into(), numbers(heights));
+            }
+            if let Some(noise) = field.noise {
+                keys.insert("noise".into(), noise.into());
+            }
+            if let Some(directions) = planned.directions {
+                let angles = |angles: Angles| {
+                    [("inclination", angles.inclination.into()), ("declination", angles.declination.into())]
+                };
+                for (key, angle) in angles(directions.field) {
+                    keys.insert(key.into(), angle);
+                }
+                if let Some(own) = directions.magnetisation {
+                    keys.insert("magnetisation".into(), table(angles(own)));
+                }
             }
             let contacts = table([
-                ("strong", field.contacts.0.into()),
-                ("weak", field.contacts.1.into()),
+                ("strong", field.contacts.quantiles.0.into()),
+                ("weak", field.contacts.quantiles.1.into()),
+                ("significance", field.contacts.significance.into()),
                 ("least_length", planned.least_length.into()),
             ]);
             keys.insert("contacts".into(), contacts);
             Value::Table(keys)
         });
         insert_list(&mut file, "potential", potentials.collect());
-        let lines = study.lines.iter().map(|lines| {
-            let mut keys = Table::new();
-            keys.insert("name".into(), lines.name.clone().into());
-            keys.insert("path".into(), study.named(&lines.source.path).into());
-            insert_text(&mut keys, "layer", &lines.source.layer);
-            insert_text(&mut keys, "crs", &lines.source.crs);
+        let lines = study.lines.iter().map(|lines| Value::Table(self.vectors(&lines.name, &lines.source)));
+        insert_list(&mut file, "lines", lines.collect());
+        let units = study.units.iter().map(|units| {
+            let mut keys = self.vectors(&units.name, &units.source);
+            keys.insert("role".into(), units.role.name().into());
             Value::Table(keys)
         });
-        insert_list(&mut file, "lines", lines.collect());
+        insert_list(&mut file, "units", units.collect());
         if let Some(deposits) = &study.deposits {
             let mut keys = Table::new();
             keys.insert("path".into(), study.named(&deposits.path).into());
@@ -76,9 +89,26 @@ impl Plan {
             ("distance_cap", self.distance_cap.into()),
             ("null", "shifts".into()),
             ("family", study.test.level.into()),
+            ("height_per_depth", study.test.height_per_depth.into()),
+            ("resolution", study.test.resolution.name().into()),
         ]);
         file.insert("test".into(), test);
         file.to_string()
+    }
+
+    fn vectors(&self, name: &str, source: &VectorSource) -> Table {
+        let mut keys = Table::new();
+        keys.insert("name".into(), name.into());
+        keys.insert("path".into(), self.study.named(&source.path).into());
+        insert_text(&mut keys, "layer", &source.layer);
+        insert_text(&mut keys, "crs", &source.crs);
+        if let Some(filter) = &source.filter {
+            let texts = |values: &[String]| Value::Array(values.iter().map(|value| value.clone().into()).collect());
+            let keep =
+                [("column", filter.column.clone().into()), ("is", texts(&filter.is)), ("not", texts(&filter.not))];
+            keys.insert("keep".into(), table(keep));
+        }
+        keys
     }
 
     fn layer(&self, layer: &PlannedLayer) -> Table {

@@ -1,13 +1,21 @@
 //! The evidence tables, made from the findings.
 
-use super::run::{Findings, SliceFinding};
+use super::contact_details::ContactDetails;
+use super::fields::FieldNoise;
+use super::references::ReferenceFinding;
+use super::run::{Findings, SubjectFinding};
+use super::slices::SliceFinding;
 use crate::coincidence::{Measure, Test};
 use crate::conductor::{Body, Side};
-use crate::evidence::{Column, Table, distance_label, file_stem};
+use crate::contact::{Contact, Drift};
+use crate::evidence::{Column, Table, distance_label};
 use crate::grid::{Grid, Placed};
 
 /// Name of the null in tables.
 const NULL_NAME: &str = "shifts without wrapping";
+
+/// Smaller chances than this are not told: no noise is known to be Gaussian that far out.
+const LEAST_LOG10_P: f64 = -300.0;
 
 /// A number, or an empty cell where it is not one.
 fn finite(value: f64) -> Option<f64> {
@@ -34,6 +42,20 @@ fn text<T>(name: &str, meaning: &str, rows: &[T], value: impl Fn(&T) -> String) 
     Column::text(name, meaning, rows.iter().map(value))
 }
 
+/// One contact, for the table.
+struct ContactRow<'a> {
+    reference: &'a ReferenceFinding,
+    number: usize,
+    contact: &'a Contact,
+    details: &'a ContactDetails,
+    drift: Option<Drift>,
+}
+
+/// The drift of the face with the most places.
+fn widest_drift(details: &ContactDetails) -> Option<Drift> {
+    details.persistence.as_ref()?.faces.first().map(|face| face.drift)
+}
+
 impl Findings {
     /// All tables, in the order in which they are shown.
     pub(super) fn tables(&self) -> Vec<Table> {
@@ -42,6 +64,9 @@ impl Findings {
             tables.push(self.bodies_table(Side::Resistor));
         }
         tables.push(self.contacts_table());
+        if !self.units.is_empty() {
+            tables.push(self.units_table());
+        }
         if !self.deposits.is_empty() {
             tables.push(self.deposits_table());
         }
@@ -50,32 +75,43 @@ impl Findings {
     }
 
     /// What a test's subject is called: for the correlation it is the conductivity itself.
-    fn subject_name(&self, test: &Test) -> &'static str {
-        match test.measure {
-            Measure::Correlation => "log10 conductivity",
-            _ => side_name(self.side(test)),
+    fn subject_name(&self, test: &Test) -> String {
+        match (test.measure, self.subjects[test.subject]) {
+            (Measure::Correlation, _) => "log10 conductivity".into(),
+            (_, SubjectFinding::Bodies { side, .. }) => side_name(side).into(),
+            (_, SubjectFinding::Units(index)) => self.plan.study.units[index].name.clone(),
         }
     }
 
     fn reference_name(&self, test: &Test) -> String {
-        let reference = &self.references[test.reference];
-        match (test.measure, reference.potential) {
-            (Measure::Correlation, _) => format!("{} gradient", reference.name),
-            (_, Some(_)) => format!("{} contacts", reference.name),
-            (_, None) => reference.name.clone(),
+        let series = self.series_of(test);
+        match (test.measure, series.potential()) {
+            (Measure::Correlation, Some(index)) => format!("{} gradient", self.plan.study.potentials[index].name),
+            (_, Some(index)) => format!("{} contacts", self.plan.study.potentials[index].name),
+            (_, None) => self.plan.series_label(series),
+        }
+    }
+
+    /// Resolving length of a test's subject, m; `None` for mapped units.
+    fn subject_length(&self, test: &Test) -> Option<f64> {
+        match self.subjects[test.subject] {
+            SubjectFinding::Bodies { slice, .. } => finite(self.slices[slice].resolving_length),
+            SubjectFinding::Units(_) => None,
         }
     }
 
     /// Which subject at which depth is told of, against which reference: the first columns of every table of tests.
     fn place_columns(&self, rows: &[&Test]) -> Vec<Column> {
         vec![
-            number("depth_m", "m", "Depth of the slice, positive down", rows, |t| Some(self.depth(t))),
-            text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t).into()),
+            number("depth_m", "m", "Depth of the slice, positive down; empty for mapped units", rows, |t| {
+                self.depth(t)
+            }),
+            text("subject", "The pattern that is moved under the null", rows, |t| self.subject_name(t)),
             text("reference", "The pattern that stays in place", rows, |t| self.reference_name(t)),
             number(
                 "height_m",
                 "m",
-                "Height of upward continuation before contacts are picked; empty for mapped lines",
+                "Height of upward continuation before contacts are picked; empty for what is mapped",
                 rows,
                 |t| self.references[t.reference].height,
             ),
@@ -97,7 +133,9 @@ impl Findings {
                     rows,
                     |t| t.measure.name().into(),
                 ),
-                number("within_m", "m", "The distance of the enrichment", rows, |t| t.measure.within()),
+                number("within_m", "m", "The distance of the enrichment; 0 means inside mapped units", rows, |t| {
+                    t.measure.within()
+                }),
                 number("observed", "own scale", "The measure as observed: ratio, metres or coefficient", rows, |t| {
                     finite(t.observed)
                 }),
@@ -161,6 +199,20 @@ impl Findings {
                     |t| t.subject_cells,
                 ),
                 count("footprint_cells", "cells", "Cells where both have data", rows, |t| t.footprint_cells),
+                number(
+                    "subject_resolves_m",
+                    "m",
+                    "Resolving length of the slice as compared: half the wavelength beyond which nine tenths of its gradient's power lie",
+                    rows,
+                    |t| self.subject_length(t),
+                ),
+                number(
+                    "reference_resolves_m",
+                    "m",
+                    "Resolving length of the potential field at height_m; empty for what is mapped",
+                    rows,
+                    |t| self.references[t.reference].resolving_length,
+                ),
                 text("null", "How the subject was displaced", rows, |_| NULL_NAME.into()),
                 text("control", "Layers taken out beforehand", rows, |_| "none".into()),
             ]].concat(),
@@ -184,7 +236,7 @@ impl Findings {
             columns: [
                 self.place_columns(rows),
                 vec![
-                    number("within_m", "m", "The distance", rows, |t| t.measure.within()),
+                    number("within_m", "m", "The distance; 0 means inside mapped units", rows, |t| t.measure.within()),
                     text("tested", "Whether this distance belongs to the family of tests", rows, |t| {
                         if t.tested { "yes" } else { "no" }.into()
                     }),
@@ -272,37 +324,109 @@ impl Findings {
 
     /// Fields of contacts, for the table and for the map layer: one row for each contact or mapped line.
     pub(super) fn contact_columns(&self) -> Vec<Column> {
-        let mut rows = Vec::new();
-        for reference in self.references.iter().filter(|reference| reference.potential.is_some()) {
-            rows.extend(reference.contacts.iter().enumerate().map(|(index, contact)| (reference, index + 1, contact)));
+        let mut rows: Vec<ContactRow<'_>> = Vec::new();
+        for reference in &self.references {
+            let numbered = reference.contacts.iter().zip(&reference.details).enumerate();
+            rows.extend(numbered.map(|(index, (contact, details))| ContactRow {
+                reference,
+                number: index + 1,
+                contact,
+                details,
+                drift: widest_drift(details),
+            }));
         }
         let rows = rows.as_slice();
+        let name = |reference: &ReferenceFinding| {
+            let potential = self.series[reference.series].potential();
+            potential.map_or_else(String::new, |index| self.plan.study.potentials[index].name.clone())
+        };
         vec![
-            text("reference", "The potential field", rows, |(reference, _, _)| reference.name.clone()),
-            number("height_m", "m", "Height of upward continuation", rows, |(reference, _, _)| reference.height),
-            count("contact", "", "Number of the contact, the longest first", rows, |(_, index, _)| *index),
-            number("length_m", "m", "Length along the line", rows, |(_, _, contact)| finite(contact.length_m)),
-            number("strike_deg", "degrees", "Strike, clockwise from grid north", rows, |(_, _, contact)| {
-                finite(contact.strike_deg)
+            text("reference", "The potential field", rows, |row| name(row.reference)),
+            number("height_m", "m", "Height of upward continuation", rows, |row| row.reference.height),
+            number("for_depth_m", "m", "Depth of the slice that this height belongs to; empty for all", rows, |row| {
+                row.reference.slice.map(|slice| self.slices[slice].depth)
+            }),
+            count("contact", "", "Number of the contact, the longest first", rows, |row| row.number),
+            number("length_m", "m", "Length along the line", rows, |row| finite(row.contact.length_m)),
+            number("strike_deg", "degrees", "Strike, clockwise from grid north", rows, |row| {
+                finite(row.contact.strike_deg)
             }),
             number(
                 "mean_gradient_per_km",
                 "field/km",
                 "Mean horizontal gradient along the line, in the unit of the field (see layers) per kilometre",
                 rows,
-                |(_, _, contact)| finite(1000.0 * contact.mean_strength),
+                |row| finite(1000.0 * row.contact.mean_strength),
             ),
             text(
                 "dense_side",
                 "Side of the higher values (dense or magnetic ground): a compass point, or inside or outside of a ring",
                 rows,
-                |row| row.2.dense_side().into(),
+                |row| row.contact.dense_side().into(),
             ),
             number("dense_side_deg", "degrees", "Azimuth toward the higher values; empty for a ring", rows, |row| {
-                finite(row.2.dense_side_deg)
+                finite(row.contact.dense_side_deg)
             }),
-            text("closed", "Whether the line is a ring", rows, |(_, _, contact)| {
-                if contact.closed { "yes" } else { "no" }.into()
+            text("closed", "Whether the line is a ring", rows, |row| {
+                if row.contact.closed { "yes" } else { "no" }.into()
+            }),
+            number(
+                "signal_to_noise",
+                "",
+                "Median gradient along the line over the standard deviation that the layer's noise gives a component of it",
+                rows,
+                |row| row.contact.significance.and_then(|found| finite(found.signal_to_noise)),
+            ),
+            number(
+                "log10_p_noise",
+                "",
+                "log10 of a bound on the chance that noise alone gives a crest as strong anywhere in the layer; not told below -300",
+                rows,
+                |row| row.contact.significance.and_then(|found| finite(found.log10_p_layer.max(LEAST_LOG10_P))),
+            ),
+            number(
+                "persists_levels",
+                "",
+                "At how many of the three levels 2, 4 and 8 cells higher at least half of the line is found again; empty where \
+                 heights belong to depths",
+                rows,
+                |row| row.details.persistence.as_ref().map(|found| found.levels as f64),
+            ),
+            number(
+                "drift_m_per_m",
+                "",
+                "How far the crest moves toward the lower values for a metre upward (median; of a ring, its longest face)",
+                rows,
+                |row| row.drift.and_then(|drift| finite(drift.rate)),
+            ),
+            number("drift_low", "", "Lower end of the drift's interval at 95 %", rows, |row| {
+                row.drift.and_then(|drift| finite(drift.low))
+            }),
+            number("drift_high", "", "Upper end of the drift's interval at 95 %", rows, |row| {
+                row.drift.and_then(|drift| finite(drift.high))
+            }),
+            text(
+                "dip",
+                "Which way the contact dips, as far as the drift tells; of a ring, by the direction that each face looks toward",
+                rows,
+                |row| row.details.dip(),
+            ),
+            number(
+                "depth_m",
+                "m",
+                "Depth below the ground by the tilt angle of the vertical derivative: median along the line; right for a \
+                 vertical contact of great depth extent",
+                rows,
+                |row| row.details.depth.map(|depth| depth.median),
+            ),
+            number("depth_low_m", "m", "Lower quartile of the depth along the line", rows, |row| {
+                row.details.depth.map(|depth| depth.low)
+            }),
+            number("depth_high_m", "m", "Upper quartile of the depth along the line", rows, |row| {
+                row.details.depth.map(|depth| depth.high)
+            }),
+            number("depth_places", "", "Places along the line at which the depth could be measured", rows, |row| {
+                row.details.depth.map(|depth| depth.places as f64)
             }),
         ]
     }
@@ -312,6 +436,30 @@ impl Findings {
             name: "contacts".into(),
             caption: "Contacts: traced crests of the horizontal gradient.".into(),
             columns: self.contact_columns(),
+        }
+    }
+
+    fn units_table(&self) -> Table {
+        let rows: Vec<_> = self.plan.study.units.iter().zip(&self.units).collect();
+        let rows = rows.as_slice();
+        let cells = (self.plan.frame.rows * self.plan.frame.cols) as f64;
+        Table {
+            name: "units".into(),
+            caption: "Mapped units, as they came onto the frame.".into(),
+            columns: vec![
+                text("name", "Name of the units", rows, |(choice, _)| choice.name.clone()),
+                text("role", "Whether they stay (reference) or are moved (subject)", rows, |(choice, _)| {
+                    choice.role.name().into()
+                }),
+                text("path", "The file, as the study names it", rows, |(choice, _)| self.named(&choice.source.path)),
+                count("features", "", "Features that were kept", rows, |(_, found)| found.features),
+                number("area_km2", "km2", "Area of their cells on the frame", rows, |(_, found)| {
+                    Some(found.mask.count() as f64 * self.plan.frame.cell_area() / 1e6)
+                }),
+                number("frame_share", "", "Share of the frame's cells that they cover", rows, |(_, found)| {
+                    Some(found.mask.count() as f64 / cells)
+                }),
+            ],
         }
     }
 
@@ -333,13 +481,15 @@ impl Findings {
             }),
         ];
         let farthest = self.plan.farthest();
-        for (index, reference) in self.references.iter().enumerate() {
+        // Layers that belong to one slice would give a column for each depth.
+        for reference in self.references.iter().filter(|reference| reference.slice.is_none()) {
+            let series = self.series[reference.series];
             columns.push(number(
-                &format!("nearest_{}_m", file_stem(&self.figure_stem(index))),
+                &format!("nearest_{}_m", self.plan.series_stem(series)),
                 "m",
                 &format!(
-                    "Distance of its cell to the nearest line of {}; empty beyond {}",
-                    self.reference_label(index),
+                    "Distance of its cell to the nearest of {}; empty beyond {}",
+                    self.plan.series_label(series),
                     distance_label(farthest)
                 ),
                 rows,
@@ -363,22 +513,31 @@ impl Findings {
             unit: String,
             planned: &'a super::plan::PlannedLayer,
             placed: &'a Placed,
+            noise: Option<FieldNoise>,
+            resolving_length: Option<f64>,
+            smoothed_by: Option<f64>,
         }
         let slices = self.slices.iter().zip(&self.plan.slices).map(|(slice, planned)| Row {
             layer: format!("resistivity at {} m", slice.depth),
             unit: "log10 ohm m".into(),
             planned: &planned.layer,
             placed: &slice.placed,
+            noise: None,
+            resolving_length: finite(slice.resolving_length),
+            smoothed_by: Some(slice.smoothed_by),
         });
         let fields = self.plan.study.potentials.iter().zip(&self.plan.potentials).zip(&self.potentials).map(
-            |((field, planned), placed)| Row {
+            |((field, planned), found)| Row {
                 layer: format!("{} ({})", field.name, field.kind.name()),
                 unit: match field.kind {
                     super::settings::PotentialKind::Magnetic { .. } => "nT; contacts in mGal of pseudo-gravity".into(),
                     kind => kind.unit().into(),
                 },
                 planned: &planned.layer,
-                placed,
+                placed: &found.placed,
+                noise: Some(found.noise),
+                resolving_length: finite(found.resolving_length),
+                smoothed_by: None,
             },
         );
         let rows: Vec<Row<'_>> = slices.chain(fields).collect();
@@ -416,6 +575,30 @@ impl Findings {
                 number("low", "see unit", "Smallest value on the frame", rows, |row| range(&row.placed.grid, false)),
                 number("high", "see unit", "Largest value on the frame", rows, |row| range(&row.placed.grid, true)),
                 text("unit", "Unit of the values on the frame", rows, |row| row.unit.clone()),
+                number(
+                    "noise",
+                    "see unit",
+                    "Standard deviation of the noise of one cell: given, or estimated from the shortest waves; fields only",
+                    rows,
+                    |row| row.noise.map(|noise| noise.sigma),
+                ),
+                text("noise_from", "Where the noise is known from", rows, |row| {
+                    row.noise.map_or("", |noise| noise.origin()).into()
+                }),
+                number(
+                    "resolving_length_m",
+                    "m",
+                    "Half the wavelength beyond which nine tenths of the gradient's power lie; of magnetics, as pseudo-gravity",
+                    rows,
+                    |row| row.resolving_length,
+                ),
+                number(
+                    "smoothed_by_m",
+                    "m",
+                    "Standard deviation of the Gaussian that matched the slice to the fields; 0 where none did",
+                    rows,
+                    |row| row.smoothed_by,
+                ),
             ],
         }
     }

@@ -73,8 +73,12 @@ pub fn trial(layers: &Layers, footprint: &Array2<bool>) -> Result<Outcome> {
 pub fn trial_over(layers: &Layers, footprint: &Array2<bool>, wide: &Array2<bool>) -> Result<Outcome> {
     let far = distance(&crests(&layers.strength, wide));
     let subjects: Vec<Subject> = layers.slices.iter().map(|slice| subject(slice, footprint)).collect();
-    let reference =
-        Reference { footprint: wide.clone(), distance: Some(far.clone()), strength: Some(layers.strength.clone()) };
+    let reference = Reference {
+        footprint: wide.clone(),
+        distance: Some(far.clone()),
+        strength: Some(layers.strength.clone()),
+        ..Reference::default()
+    };
     let settings = Settings { within: WITHIN.to_vec(), profile: vec![], distance_cap: CAP, level: 0.05 };
     let comparison = compare(&subjects, &[reference], &settings)?;
     let first = |measure| comparison.tests.iter().find(|test| test.subject == 0 && test.measure == measure).unwrap();

@@ -46,6 +46,11 @@ pub fn case(seed: u64, kind: usize, slices: usize) -> Case {
     });
     Case {
         subjects: subjects.collect(),
-        reference: Reference { footprint: staying, distance: Some(distance), strength: Some(gravity) },
+        reference: Reference {
+            footprint: staying,
+            distance: Some(distance),
+            strength: Some(gravity),
+            ..Reference::default()
+        },
     }
 }
