@@ -2,7 +2,7 @@
 # make test       all tests
 # make check      format, lints, documentation
 # make bench      timed ratios (needs python3; installs numpy and scipy into target/peer)
-# make calibrate  the null's level in full; writes the table into DEVELOPERS.md
+# make calibrate  the levels in full: the null's, whose table it writes into DEVELOPERS.md, and that of contacts in noise
 # make grids      make demo-grids anew from its seed
 
 SHELL := /bin/bash
@@ -27,6 +27,7 @@ bench: system
 
 calibrate: system
 	cargo bench --locked --bench calibrate -- DEVELOPERS.md
+	SALBAND_LAYERS=400 cargo test --release --locked --test contact_noise -- --nocapture
 
 grids: system
 	cargo run --release --locked --example make_demo_grids -- demo-grids

@@ -87,7 +87,7 @@ fn cases() -> Vec<Case> {
         case(
             "a significance of one",
             |s| s.study("kind = \"gravity\"", "contacts = { significance = 1.0 }"),
-            "salband: study.toml, line 16: contacts.significance: found 1; wanted a number above 0 and below 1: the chance that noise alone gives a layer any contact.",
+            "salband: study.toml, line 16: contacts.significance: found 1; wanted a number above 0 and at most 0.5: the chance that noise alone gives a layer any contact.",
         ),
         case(
             "no height in the list",
@@ -111,6 +111,24 @@ fn cases() -> Vec<Case> {
             "a height that does not grow with depth",
             |s| s.study("[test]", "[test]\nheight_per_depth = 0.0"),
             "salband: study.toml, line 19: test.height_per_depth: found 0; wanted a positive number of metres up for a metre of depth.",
+        ),
+        case(
+            "lines called as contacts are",
+            |s| s.study("[test]", "[[lines]]\nname = \"gravity_0\"\npath = \"f.geojson\"\n\n[test]"),
+            "salband: study.toml, line 19: a name: found \"gravity_0\", which bodies or contacts of a field are called; wanted a name of its own, since it stands in tables and file names. To mend it: give it another name.",
+        ),
+        case(
+            "units that are moved beside matching",
+            |s| {
+                let units = "[[units]]\nname = \"suite\"\npath = \"s.geojson\"\nrole = \"subject\"\n\n[test]\nresolution = \"matched\"";
+                s.study("[test]", units);
+            },
+            "salband: study.toml: units \"suite\": found units that are moved beside test.resolution = \"matched\"; wanted one of them, since matched fields belong to slices and units to none. To mend it: write resolution = \"as-is\", or test the units in a study of their own.",
+        ),
+        case(
+            "a vector file that is not there",
+            |s| s.study("[test]", "[[lines]]\nname = \"faults\"\npath = \"f.geojson\"\n\n[test]"),
+            "salband: f.geojson: the file: found nothing at this path; wanted a vector file with lines. To mend it: check the path; a relative one starts at the folder of the study file.",
         ),
         case(
             "units with an unknown role",

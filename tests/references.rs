@@ -89,7 +89,7 @@ fn resistors_inside_a_mapped_suite_are_found_and_the_filter_decides() {
     assert_eq!(told.len(), 1);
     assert_eq!(told[0]["features"], "12");
     let area: f64 = told[0]["area_km2"].parse().unwrap();
-    assert!((area - covered as f64 * 0.25).abs() < 1e-9, "{area} km2 against {covered} cells");
+    assert!((area - covered as f64 * 0.25).abs() < 1e-6, "{area} km2 against {covered} cells");
     let rows = table(&survey, "coincidence");
     let of_resistors: Vec<_> = rows
         .iter()

@@ -7,7 +7,7 @@ use std::path::Path;
 use std::process::{Command, Stdio};
 use std::time::{Duration, Instant};
 
-use common::{Survey, stderr};
+use common::{STUDY, Survey, stderr};
 
 /// Every file below a folder with its bytes, by relative path.
 fn contents(folder: &Path) -> BTreeMap<String, Vec<u8>> {
@@ -30,7 +30,10 @@ fn contents(folder: &Path) -> BTreeMap<String, Vec<u8>> {
 #[test]
 fn the_same_bytes_on_one_thread_on_two_and_again() {
     let survey = Survey::new();
-    survey.study("quantile = 0.80 }", "quantile = 0.80 }\nresistors = { quantile = 0.2 }");
+    let magnetics =
+        "[[potential]]\nname = \"magnetics\"\npath = \"gravity.tif\"\nkind = \"magnetic\"\nyear = 2012.5\n\n[test]";
+    let study = STUDY.replace("quantile = 0.80 }", "quantile = 0.80 }\nresistors = { quantile = 0.2 }");
+    survey.file("study.toml", &study.replace("[test]", magnetics));
     for (out, threads) in [("one", "1"), ("two", "2"), ("again", "2")] {
         let output = survey.salband(&["run", "study.toml", "--out", out, "--threads", threads]);
         assert!(output.status.success(), "{}", stderr(&output));

@@ -55,6 +55,7 @@ kind = "magnetic"
 # lies {CONVERGENCE} degrees east of it here). Invented like the rest: at this latitude a real one would point down.
 inclination = {inclination:.1}
 declination = {from_true_north:.2}
+# No heights are listed: contacts are picked on the field as it is and, for each slice, half its depth higher.
 
 # Known deposits: they are drawn on the maps and listed; they are never used to find contacts or conductors.
 [deposits]

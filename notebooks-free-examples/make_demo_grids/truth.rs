@@ -94,7 +94,7 @@ part of the invention. Gravity has three round gaps. Added: a plane and one long
 Conductors here are the most conductive 15 % of the ground at each depth; the ratio is their share within 1 km of
 margins over the ground's share. Without a tie it is near 1. Margins are those of all bodies with a density contrast,
 bare ones too; crests are those of the horizontal gradient of the gravity grid, the stronger ones only. salband's contacts
-take in weaker crests as well, some of them noise and no margin, so that its ratios are smaller.
+are crests above the noise of the grid, so that its ratios come close to the last column.
 
 {check}
 A separate script, which reads the files, tested the enrichment within 1 km of crests against all shifts up to a

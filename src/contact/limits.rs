@@ -23,15 +23,17 @@ impl<'a> Limits<'a> {
     /// For a layer of `cells` cells.
     pub fn new(noise: &'a GradientNoise, significance: f64, cells: usize) -> Self {
         let pointwise = noise.pointwise_bound(significance);
+        let layer = noise.layer_bound(significance, cells);
         // The difference of two values has the square root of two times the deviation of one.
         let fall = std::f64::consts::SQRT_2 * pointwise;
         Self {
             noise,
             pointwise,
-            layer: noise.layer_bound(significance, cells),
+            layer,
             edge: noise.edge(),
             along: Prominence { fall, rise: std::f64::consts::SQRT_2 * noise.component(), at_end: true },
-            start: Prominence { fall, rise: 0.0, at_end: false },
+            // On the flank of a slope every cell is strong, so the fall to both sides must be beyond the layer's noise as well.
+            start: Prominence { fall: std::f64::consts::SQRT_2 * layer, rise: 0.0, at_end: false },
         }
     }
 

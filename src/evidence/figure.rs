@@ -36,6 +36,7 @@ const STYLE: &str = "
 .sb .sb-hollow{fill:#fff;stroke:#a8470b;stroke-width:2}
 .sb .sb-conductor{fill:#f0a13c;fill-opacity:.55;stroke:#a8470b;stroke-width:1.2;stroke-linejoin:round}
 .sb .sb-contact{fill:none;stroke:#123a6f;stroke-width:1.5;stroke-linejoin:round;stroke-linecap:round}
+.sb .sb-mapped{fill:none;stroke:#5b3a8c;stroke-width:1.3;stroke-dasharray:6 3;stroke-linejoin:round;stroke-linecap:butt}
 .sb .sb-casing{fill:none;stroke:#fff;stroke-width:4;stroke-linejoin:round;stroke-linecap:round}
 .sb .sb-deposit{fill:#fff;stroke:#14181c;stroke-width:1.4}
 .sb .sb-ink{fill:#1f262d;stroke:#1f262d;stroke-width:1}

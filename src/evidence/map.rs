@@ -7,7 +7,7 @@ use svg::node::element::{ClipPath, Group, Image, Line, Path as Outline, Pattern,
 use super::colours::Colours;
 use super::figure::{Canvas, Figure, WIDTH, place};
 use super::map_key::{key, key_height};
-use super::map_shapes::{area_data, contact_data, tick_data, void_data};
+use super::map_shapes::{area_data, contact_data, line_data, tick_data, void_data};
 use super::picture::{data_uri, png, quantile_range, reduced};
 use crate::error::Result;
 use crate::grid::{Frame, Grid, Mask};
@@ -72,6 +72,8 @@ pub struct MapFigure<'a> {
     pub conductors: &'a [MultiPolygon<f64>],
     /// The contacts.
     pub contacts: &'a [ContactLine],
+    /// Lines from a map: faults, dykes, outlines of units.
+    pub mapped: &'a [LineString<f64>],
     /// Known deposits.
     pub deposits: &'a [Deposit],
 }
@@ -146,6 +148,12 @@ impl MapFigure<'_> {
         for contact in self.contacts.iter().filter(|_| coloured) {
             draw("sb-casing", contact_data(contact, &projection));
             draw("sb-casing", tick_data(contact, &projection));
+        }
+        for line in self.mapped.iter().filter(|_| coloured) {
+            draw("sb-casing", line_data(line, &projection, false));
+        }
+        for line in self.mapped {
+            draw("sb-mapped", line_data(line, &projection, false));
         }
         for contact in self.contacts {
             draw("sb-contact", contact_data(contact, &projection));
@@ -232,6 +240,7 @@ mod tests {
             footprint,
             conductors: &[body],
             contacts: &contacts,
+            mapped: &[LineString::from(vec![(0.0, 2000.0), (4000.0, 2000.0)])],
             deposits,
         };
         figure.draw().unwrap().svg
@@ -248,6 +257,7 @@ mod tests {
         let svg = drawn(&deposits, Some(&holes), Some(&grid), &frame);
         assert!(svg.contains("data:image/png;base64,") && svg.contains("&lt;Alder&gt;") && !svg.contains("Outside"));
         assert!(!svg.contains("NaN") && svg.contains("sb-hatch") && svg.contains("No data"));
+        assert_eq!(svg.matches("class=\"sb-mapped\"").count(), 2, "the line and the legend");
         // The scale of the figure: 4,000 m over the room of 520 - 58 - 10 units.
         let projection = Projection::new(&frame);
         assert_eq!(projection.at(0.0, 3000.0), (58.0, 58.0));

@@ -11,6 +11,7 @@ const LINE: f64 = 24.0;
 enum Entry {
     Conductor,
     Contact,
+    Mapped,
     NoData,
     Deposit,
 }
@@ -20,6 +21,7 @@ fn entries(map: &MapFigure) -> Vec<Entry> {
     [
         (!map.conductors.is_empty(), Entry::Conductor),
         (!map.contacts.is_empty(), Entry::Contact),
+        (!map.mapped.is_empty(), Entry::Mapped),
         (gaps, Entry::NoData),
         (!map.deposits.is_empty(), Entry::Deposit),
     ]
@@ -50,6 +52,10 @@ pub(super) fn key(canvas: &mut Canvas, map: &MapFigure, range: Option<(f64, f64)
                 let ticks = [5.0, 13.0, 21.0].map(|by| path_data([(x + by, y + 2.0), (x + by, y - 3.0)], false));
                 canvas.outline("sb-contact", ticks.concat());
                 "Contact, ticks on the dense side"
+            }
+            Entry::Mapped => {
+                canvas.outline("sb-mapped", path_data([(x, y), (x + 26.0, y)], false));
+                "Mapped line or outline"
             }
             Entry::NoData => {
                 canvas.rectangle("sb-frame", (x, y - 7.0), (26.0, 14.0));

@@ -10,7 +10,8 @@ use crate::grid::{Frame, Mask};
 const TICK_EVERY: f64 = 13.0;
 const TICK_LENGTH: f64 = 5.0;
 
-fn line_data(line: &LineString<f64>, projection: &Projection, closed: bool) -> String {
+/// A line, or a ring where it is closed.
+pub(super) fn line_data(line: &LineString<f64>, projection: &Projection, closed: bool) -> String {
     let finite = line.0.iter().filter(|place| place.x.is_finite() && place.y.is_finite());
     path_data(finite.map(|place| projection.at(place.x, place.y)), closed)
 }

@@ -41,7 +41,7 @@ const fn optional(name: &'static str, unit: &'static str, purpose: &'static str)
 
 const HEIGHT: Parameter = optional("height", "m", "continue the field upward first; 0 if left out");
 const INCLINATION: Parameter = needed("inclination", "degrees", "of the geomagnetic field, positive downward");
-const DECLINATION: Parameter = needed("declination", "degrees", "of the geomagnetic field, clockwise from grid north");
+const DECLINATION: Parameter = needed("declination", "degrees", "of the geomagnetic field, clockwise from north");
 const DIP: Parameter =
     optional("magnetisation-inclination", "degrees", "of the total magnetisation; along the field if left out");
 const BEARING: Parameter =
@@ -179,7 +179,7 @@ pub(super) static LIST: &[Listed] = &[
         gives: "the gravity that the bodies of a magnetic potential would have",
         parameters: &[
             needed("magnetisation-inclination", "degrees", "of the total magnetisation, positive downward"),
-            needed("magnetisation-declination", "degrees", "of the total magnetisation, clockwise from grid north"),
+            needed("magnetisation-declination", "degrees", "of the total magnetisation, clockwise from north"),
             RATIO,
         ],
         make: |given| {

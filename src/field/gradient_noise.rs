@@ -85,6 +85,21 @@ impl GradientNoise {
         Self::new(sigma, cell, height, 0, |wave| directions.to_pseudo_gravity(ratio, wave).norm_sqr())
     }
 
+    /// For the gradient of the first vertical derivative of the pseudo-gravity, mGal/m, of a magnetic layer.
+    ///
+    /// # Errors
+    /// As [`Self::of_pseudo_gravity`].
+    pub fn of_vertical_pseudo_gravity(
+        sigma: f64,
+        cell: f64,
+        height: f64,
+        directions: MagneticDirections,
+        ratio: f64,
+    ) -> Result<Self> {
+        let ratio = super::pole::checked_ratio(ratio)?;
+        Self::new(sigma, cell, height, 1, |wave| directions.to_pseudo_gravity(ratio, wave).norm_sqr())
+    }
+
     /// For |F|^2 |k|^2 = gain(direction) |k|^(2 order), where `gain` is given waves of unit length.
     fn new(sigma: f64, cell: f64, height: f64, order: i32, gain: impl Fn(Wave) -> f64) -> Result<Self> {
         for (name, value, positive) in [

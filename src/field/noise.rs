@@ -51,11 +51,14 @@ impl NoiseEstimate {
         self.sigma * (1.0 + self.relative_error)
     }
 
-    /// False where the power still changes more than twofold between the inner and the outer part. Most often it falls:
-    /// the layer was interpolated or smoothed, so that its noise is larger than `sigma` says at the waves that carry
-    /// contacts, or shallow sources reach this far.
+    /// False where the power changes between the inner and the outer part by more than three of its standard errors, or
+    /// twofold. Most often it falls: the layer was interpolated or smoothed, so that its noise is larger than `sigma` says
+    /// at the waves that carry contacts, or shallow sources reach this far.
     pub fn is_white(&self) -> bool {
-        (1.0 / MOST_FALL..=MOST_FALL).contains(&self.fall)
+        // The inner part holds three quarters of the waves and the outer one a quarter, so that the logarithm of their ratio
+        // has an error of sqrt(4/3 + 4) times that of the whole, which is twice that of its square root, sigma.
+        let error = 2.0 * self.relative_error * (4.0_f64 / 3.0 + 4.0).sqrt();
+        self.fall.ln().abs() <= (3.0 * error).min(MOST_FALL.ln())
     }
 }
 

@@ -10,6 +10,12 @@ const SHARE: f64 = 0.9;
 /// Rings between zero and the highest wavenumber of the grid.
 const RINGS: usize = 4096;
 
+/// Beyond this share of the highest wavenumber, in the corners of the square, a layer holds noise and little else.
+const CORNER: f64 = 0.85;
+
+/// How many times the level of the noise a ring must carry to count.
+const CLEAR: f64 = 1.5;
+
 /// A search for a height or a width stops when it knows it to this share.
 const PRECISION: f64 = 1e-6;
 
@@ -17,8 +23,9 @@ const PRECISION: f64 = 1e-6;
 ///
 /// The resolving length of a layer is half the wavelength beyond which nine tenths of that power lie: detail finer than
 /// it is faint. For the straight edge of a sheet at depth z, whose gradient is z / (x^2 + z^2), the power falls as
-/// exp(-2 k z), so the length is 2 pi z / ln 10 = 2.73 z. The share of nine tenths is our convention. White noise carries
-/// its power in short waves, so a noisy layer has a length near its cell: it does hold detail that fine, if not of the ground.
+/// exp(-2 k z), so the length is 2 pi z / ln 10 = 2.73 z. The share of nine tenths is our convention. White noise would
+/// carry most of that power in the shortest waves, so its level, the mean power in the corners of the wavenumber square, is
+/// taken off first, and waves that do not stand half above it count for nothing.
 #[derive(Debug, Clone)]
 pub struct GradientPower {
     /// Width of a ring, radians per metre.
@@ -34,13 +41,21 @@ impl PreparedField {
     pub fn gradient_power(&self) -> Result<GradientPower> {
         let highest = std::f64::consts::SQRT_2 * std::f64::consts::PI / self.frame().cell;
         let step = highest / RINGS as f64;
-        let mut power = vec![0.0; RINGS];
+        // Of each ring the number of waves, their power and that of their gradients.
+        let mut rings = vec![(0.0, 0.0, 0.0); RINGS];
         let mut waves = 0.0;
         self.for_each_power(|length, carried| {
             waves += 1.0;
-            let ring = ((length / step) as usize).min(RINGS - 1);
-            power[ring] += length * length * carried;
+            let ring = &mut rings[((length / step) as usize).min(RINGS - 1)];
+            *ring = (ring.0 + 1.0, ring.1 + carried, ring.2 + length * length * carried);
         });
+        let corner = &rings[(CORNER * RINGS as f64) as usize..];
+        let (count, carried) = corner.iter().fold((0.0, 0.0), |sum, ring| (sum.0 + ring.0, sum.1 + ring.1));
+        let floor = if count > 0.0 { carried / count } else { 0.0 };
+        let above = |&(count, carried, gradient): &(f64, f64, f64)| {
+            if carried > CLEAR * floor * count { gradient * (1.0 - floor * count / carried) } else { 0.0 }
+        };
+        let power: Vec<f64> = rings.iter().map(above).collect();
         let sum: f64 = power.iter().sum();
         // What a plane leaves behind is rounding, which its own slope measures (Parseval's theorem).
         let rounding = 1e-18 * (waves * self.slope()).powi(2);

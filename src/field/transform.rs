@@ -183,7 +183,11 @@ pub fn derive(grid: &Grid, transform: &Transform) -> Result<Grid> {
         Transform::PotentialToGravity { magnetisation, ratio } => {
             field()?.potential_to_gravity(magnetisation, ratio)?.values()
         }
-        Transform::FabricStrike { window } => grid.with(Fabric::of(&gradient(0.0)?, window)?.strike),
+        Transform::FabricStrike { window } => {
+            // A file of 32-bit floats would round what is just below 180 up to it.
+            let strike = Fabric::of(&gradient(0.0)?, window)?.strike;
+            grid.with(strike.mapv(|strike| if strike as f32 >= 180.0 { 0.0 } else { strike }))
+        }
         Transform::FabricCoherence { window } => grid.with(Fabric::of(&gradient(0.0)?, window)?.coherence),
         Transform::Regional { degree } => Ok(regional(grid, degree)?.regional),
         Transform::Residual { degree } => Ok(regional(grid, degree)?.residual),

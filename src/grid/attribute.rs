@@ -150,10 +150,14 @@ impl ColumnTest<'_> {
             .mend("check the spelling, capitals included")
     }
 
-    /// The values under `is` that no feature has.
+    /// The values under `is` and `not` that no feature has.
     pub(super) fn unmet(&self) -> Vec<String> {
         let met = |value: &&String| !self.met.iter().any(|text| same(value.trim(), text, self.kind));
-        if self.met.len() == REMEMBERED { Vec::new() } else { self.filter.is.iter().filter(met).cloned().collect() }
+        if self.met.len() == REMEMBERED {
+            Vec::new()
+        } else {
+            self.filter.is.iter().chain(&self.filter.not).filter(met).cloned().collect()
+        }
     }
 }
 

@@ -30,6 +30,13 @@ pub fn read_lines(source: &VectorSource, frame: &Frame, margin: f64) -> Result<V
 
 fn read(source: &VectorSource, frame: &Frame, margin: f64) -> Result<Vec<LineString<f64>>> {
     let found = source.shapes("lines")?;
+    if !found.unmet.is_empty() {
+        let values: Vec<String> = found.unmet.iter().map(|value| format!("{value:?}")).collect();
+        return Err(Error::input("the filter")
+            .found(format!("no feature with the value {}", values.join(" or ")))
+            .wanted("values that the file has")
+            .mend("check the spelling, capitals included, or take the value out"));
+    }
     let mut lines = Vec::new();
     for shape in &found.shapes {
         collect(&shape.geometry, &mut lines);

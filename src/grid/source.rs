@@ -10,6 +10,9 @@ use super::reason::Reason;
 use super::{Crs, Frame};
 use crate::error::{Error, Result};
 
+/// Sides of a cell that differ by less than this share count as equal.
+const SQUARE: f64 = 1e-6;
+
 /// Compressed data seldom shrink more than this: deflate's own limit is 1032 to 1 (RFC 1951 allows 258 bytes in 2 bits).
 const MOST_COMPRESSION: u64 = 1100;
 
@@ -263,6 +266,23 @@ impl Raster {
         std::iter::once(self.path.clone()).chain(others).collect()
     }
 
+    /// One band (counted from 1) on the raster's own cells, whatever its system: scaled, NaN where there is no data.
+    ///
+    /// # Errors
+    /// Data that cannot be read.
+    pub fn own_cells(&self, band: usize) -> Result<Array2<f64>> {
+        let (rows, cols) = self.shape;
+        self.read(band, Window { row: 0, col: 0, rows, cols })
+    }
+
+    /// The raster's own cells as a frame; `None` unless it is north-up, of square cells, in a projected system in metres.
+    pub fn own_frame(&self) -> Option<Frame> {
+        let [west, across, turn_x, north, turn_y, down] = self.transform;
+        let straight = turn_x == 0.0 && turn_y == 0.0 && across > 0.0 && (across + down).abs() <= SQUARE * across;
+        let (rows, cols) = self.shape;
+        if straight { Frame::new(self.crs.clone(), west, north, across, rows, cols).ok() } else { None }
+    }
+
     /// The box that the raster covers, in its own system.
     pub fn extent(&self) -> Extent {
         let (rows, cols) = (self.shape.0 as f64, self.shape.1 as f64);
@@ -435,5 +455,10 @@ fn band_depth(dataset: &Dataset, band: usize) -> Option<f64> {
 /// GDAL would print its own messages; salband hands them on inside its errors instead.
 pub(super) fn silence_gdal() {
     static ONCE: std::sync::Once = std::sync::Once::new();
-    ONCE.call_once(|| gdal::config::set_error_handler(|_, _, _| {}));
+    ONCE.call_once(|| {
+        gdal::config::set_error_handler(|_, _, _| {});
+        // ASCII grids are read in single precision otherwise, which a level of 980,000 mGal does not survive. A setting
+        // that GDAL does not take leaves things as they were.
+        let _ = gdal::config::set_config_option("AAIGRID_DATATYPE", "Float64");
+    });
 }

@@ -81,6 +81,13 @@ impl VectorSource {
     }
 
     fn choose<'a>(&self, dataset: &'a Dataset) -> Result<Layer<'a>> {
+        if self.layer.is_none() && dataset.layer_count() > 1 {
+            let names: Vec<String> = dataset.layers().map(|layer| layer.name()).collect();
+            return Err(Error::input("the layer")
+                .found(format!("{} layers and no choice among them", names.len()))
+                .wanted(format!("one of: {}", names.join(", ")))
+                .mend("set layer"));
+        }
         let chosen = match &self.layer {
             Some(name) => dataset.layer_by_name(name),
             None => dataset.layer(0),

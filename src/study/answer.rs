@@ -224,13 +224,23 @@ impl Findings {
             let with_strength = |test: &&Test| here(test) && test.measure == Measure::Correlation;
             let depths = self.depths(found.iter().copied().filter(near));
             let correlated = self.depths(found.iter().copied().filter(with_strength));
+            let told = |bodies: bool| {
+                self.told(|test| {
+                    self.series_of(test) == series
+                        && self.side(test) == Some(Side::Conductor)
+                        && test.measure.within().is_some() == bodies
+                })
+            };
             detail.push(match (depths.is_empty(), correlated.is_empty()) {
-                (true, true)
-                    if !self.told(|test| self.series_of(test) == series && self.side(test) == Some(Side::Conductor)) =>
-                {
-                    format!("{}: the data cannot tell.", capital(&label))
-                }
-                (true, true) => format!("{}: nothing shown beyond chance.", capital(&label)),
+                (true, true) => match (told(true), told(false)) {
+                    (true, _) => format!("{}: nothing shown beyond chance.", capital(&label)),
+                    (false, true) => format!(
+                        "{}: whether conductors lie closer, the data cannot tell; conductivity is not shown to rise with \
+                         gradient strength.",
+                        capital(&label)
+                    ),
+                    (false, false) => format!("{}: the data cannot tell.", capital(&label)),
+                },
                 (false, true) => {
                     format!("{}: conductors lie closer than chance at {}.", capital(&label), list(&depths))
                 }
@@ -355,7 +365,10 @@ impl Findings {
             }
         }
         if !bare.is_empty() {
-            limits.push(format!("No line was found for {}.", list(&bare)));
+            limits.push(format!(
+                "No line was found for {}: no crest is long enough and stands above the noise.",
+                list(&bare)
+            ));
         }
         let scarce = tests().filter(|t| t.p_family.is_some() && t.independent_shifts < 1.0 / VALID_LEVEL - 1.0).count();
         if scarce > 0 {

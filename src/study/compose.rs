@@ -138,7 +138,7 @@ pub fn compose(choice: &NamedFiles) -> Result<String> {
         let _ = writeln!(
             text,
             "\n[[units]]\nname = {}\npath = {}\n# keep = {{ column = \"...\", is = [\"...\"] }}   # which polygons; salband inspect \
-             lists columns and values\n# role = \"reference\"   # or \"subject\": moved over everything else",
+             lists columns and values\n# role = \"reference\"   # or \"subject\": moved over contacts, lines and units that stay",
             quoted(&name),
             relative(path)
         );

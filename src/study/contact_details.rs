@@ -47,25 +47,34 @@ pub(super) fn details(
     Ok(depths.into_iter().zip(persistence).map(|(depth, persistence)| ContactDetails { depth, persistence }).collect())
 }
 
+/// A depth is told where the gradient of the vertical derivative stands this many deviations above the noise, along at least
+/// half of the contact: the tilt angle of what is weaker is that of the noise, and comes out too shallow.
+const CLEAR: f64 = 10.0;
+
 /// Depths below the ground by the tilt angle of the vertical derivative, which for pseudo-gravity is the anomaly reduced to
-/// the pole; none for a field that is not known to be a potential.
+/// the pole. None for a field that is not known to be a potential, none from a continued one (over bodies of finite depth
+/// extent the tilt does not deepen as the height grows, so that height cannot be taken off), none out of noise.
 fn depths(
     kind: PotentialKind,
     field: &PlacedField,
     height: f64,
     contacts: &[Contact],
 ) -> Result<Vec<Option<DepthEstimate>>> {
-    if kind == PotentialKind::Other || contacts.is_empty() {
+    if kind == PotentialKind::Other || height > 0.0 || contacts.is_empty() {
         return Ok(vec![None; contacts.len()]);
     }
-    let gradient = field.prepared.vertical()?.gradient(height)?;
-    let below = |found: DepthEstimate| DepthEstimate {
-        median: found.median - height,
-        low: found.low - height,
-        high: found.high - height,
-        ..found
+    let gradient = field.prepared.vertical()?.gradient(0.0)?;
+    let least = CLEAR * field.vertical_noise()?.component();
+    let clear = |contact: &Contact| {
+        let strengths = contact.line.0.iter().filter_map(|place| {
+            let cell = gradient.frame().cell_at(place.x, place.y)?;
+            Some(gradient.east()[cell].hypot(gradient.north()[cell]))
+        });
+        let strengths: Vec<f64> = strengths.filter(|strength| strength.is_finite()).collect();
+        2 * strengths.iter().filter(|strength| **strength >= least).count() >= strengths.len().max(1)
     };
-    Ok(contacts.iter().map(|contact| tilt_depth(contact, &gradient).map(below)).collect())
+    let measured = |contact| tilt_depth(contact, &gradient).filter(|found| found.low > 0.0 && clear(contact));
+    Ok(contacts.iter().map(measured).collect())
 }
 
 impl ContactDetails {

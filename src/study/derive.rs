@@ -3,15 +3,17 @@
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 
+use super::frame_choice::refuse_distortion;
 use crate::error::{Error, Result};
+use crate::evidence::significant;
 use crate::field::{Transform, derive};
 use crate::grid::{Crs, Frame, Raster, Source, true_north, write_raster};
 
 /// Parameters that are azimuths from true north, as reference models give them.
 const AZIMUTHS: [&str; 2] = ["declination", "magnetisation-declination"];
 
-/// A cell whose sides differ by less than this share is square.
-const SQUARE: f64 = 1e-6;
+/// A transform needs this many rows and columns.
+const LEAST_SIDE: usize = 8;
 
 /// What to derive, from what, to where.
 #[derive(Debug, Clone)]
@@ -49,6 +51,7 @@ pub struct Derivation {
 /// A transform or parameter that is not known, a raster that cannot be read or is in degrees, a layer that cannot be
 /// transformed, a file that exists already or cannot be written.
 pub fn derive_raster(choice: &Derivation) -> Result<String> {
+    refuse_place(&choice.out)?;
     if choice.out.exists() && !choice.replace {
         return Err(Error::input("the file to write")
             .file(&choice.out)
@@ -60,6 +63,14 @@ pub fn derive_raster(choice: &Derivation) -> Result<String> {
     Transform::named(&choice.transform, &choice.parameters)?;
     let source = Source { path: choice.path.clone(), variable: choice.variable.clone(), crs: choice.crs.clone() };
     let raster = source.open()?;
+    let real = |path: &Path| std::fs::canonicalize(path).ok();
+    if raster.files().iter().chain([&choice.path]).any(|read| real(read).is_some() && real(read) == real(&choice.out)) {
+        return Err(Error::input("the file to write")
+            .file(&choice.out)
+            .found("a file that the raster is read from")
+            .wanted("another path, since the raster would be lost")
+            .mend("choose another name"));
+    }
     if choice.band == 0 || choice.band > raster.bands {
         return Err(Error::input("the band")
             .file(raster.path())
@@ -69,23 +80,39 @@ pub fn derive_raster(choice: &Derivation) -> Result<String> {
     }
     let at_raster = |error: Error| error.file(raster.path());
     let frame = frame_of(&raster, choice).map_err(at_raster)?;
+    // Before the raster is read: a huge cell would ask for as much memory around it.
+    if frame.rows.min(frame.cols) < LEAST_SIDE {
+        return Err(at_raster(
+            Error::input("the frame's shape")
+                .found(format!("{} rows x {} columns", frame.rows, frame.cols))
+                .wanted(format!("at least {LEAST_SIDE} rows and {LEAST_SIDE} columns"))
+                .mend("choose a smaller --cell or a larger raster"),
+        ));
+    }
+    let another = "name a system made for the area with --onto EPSG:CODE";
+    refuse_distortion(&frame).map_err(|error| at_raster(error).mend(another))?;
     let transform = Transform::named(&choice.transform, &from_grid_north(&choice.parameters, &frame)?)?;
     let placed = raster.place(choice.band, &frame, Ok)?;
     let product = derive(&placed.grid, &transform).map_err(at_raster)?;
-    let unit = transform.product_unit(choice.unit.as_deref().unwrap_or(&raster.unit));
+    let known = choice.unit.as_deref().unwrap_or(&raster.unit);
+    // A unit made from one that is not known would claim a pure number.
+    let made_from_it = transform.product_unit("U") != transform.product_unit("V");
+    let unit = if known.is_empty() && made_from_it { String::new() } else { transform.product_unit(known) };
     let given: Vec<String> = choice.parameters.iter().map(|(name, value)| format!("{name} {value}")).collect();
     let title = [vec![choice.transform.clone()], given].concat().join(", ");
     whole(&choice.out, |path| write_raster(path, &product, &title, &unit))?;
     let range = match product.range() {
-        Some((low, high)) => format!("{low:.6} to {high:.6}"),
+        Some((low, high)) => format!("{} to {}", significant(low, 5), significant(high, 5)),
         None => "no number".into(),
     };
+    let unit = if unit.is_empty() { "in a unit that is not known: state it with --unit".into() } else { unit };
     Ok(format!(
-        "Wrote {}: {title}; {} rows x {} columns of {} m in {}; {range} {unit}",
+        "Wrote {}: {title}, of band {}; {} rows x {} columns of {} m in {}; {range} {unit}",
         choice.out.display(),
+        choice.band,
         frame.rows,
         frame.cols,
-        frame.cell,
+        significant(frame.cell, 6),
         frame.crs.name
     ))
 }
@@ -94,8 +121,11 @@ pub fn derive_raster(choice: &Derivation) -> Result<String> {
 fn from_grid_north(parameters: &BTreeMap<String, f64>, frame: &Frame) -> Result<BTreeMap<String, f64>> {
     let mut turned = parameters.clone();
     for name in AZIMUTHS {
-        if let Some(azimuth) = turned.get_mut(name) {
-            *azimuth += true_north(frame)?;
+        if let Some(azimuth) = turned.get_mut(name)
+            && (-360.0..=360.0).contains(azimuth)
+        {
+            // Brought to [-180, 180), so that the turn does not lead out of what a direction takes.
+            *azimuth = (*azimuth + true_north(frame)? + 180.0).rem_euclid(360.0) - 180.0;
         }
     }
     Ok(turned)
@@ -103,12 +133,11 @@ fn from_grid_north(parameters: &BTreeMap<String, f64>, frame: &Frame) -> Result<
 
 /// The frame on which a raster is transformed.
 fn frame_of(raster: &Raster, choice: &Derivation) -> Result<Frame> {
-    let [west, across, turn_x, north, turn_y, down] = raster.transform;
-    let straight = turn_x == 0.0 && turn_y == 0.0 && across > 0.0 && (across + down).abs() <= SQUARE * across;
-    if choice.onto.is_none() && choice.cell.is_none() && straight {
-        let (rows, cols) = raster.shape;
-        return Frame::new(raster.crs.clone(), west, north, across, rows, cols)
-            .map_err(|error| error.mend("name a projected system in metres with --onto EPSG:..."));
+    if choice.onto.is_none()
+        && choice.cell.is_none()
+        && let Some(frame) = raster.own_frame()
+    {
+        return Ok(frame);
     }
     let crs = match &choice.onto {
         Some(definition) => Crs::from_definition(definition)?,
@@ -141,6 +170,23 @@ fn frame_of(raster: &Raster, choice: &Derivation) -> Result<Frame> {
     )
 }
 
+/// Refuses a path that no file can be written at.
+fn refuse_place(path: &Path) -> Result<()> {
+    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    let found = if path.is_dir() {
+        "a folder at this path"
+    } else if !folder.is_dir() {
+        "no such folder"
+    } else {
+        return Ok(());
+    };
+    Err(Error::input("the file to write")
+        .file(path)
+        .found(found)
+        .wanted("the path of a GeoTIFF in a folder that exists")
+        .mend("choose another path, or make the folder first"))
+}
+
 /// Writes a file beside its place and renames it there, so that it is whole or not there at all.
 fn whole(path: &Path, write: impl Fn(&Path) -> Result<()>) -> Result<()> {
     let name = path.file_name().map_or_else(|| "raster".into(), |name| name.to_string_lossy().into_owned());
@@ -163,7 +209,9 @@ fn whole(path: &Path, write: impl Fn(&Path) -> Result<()>) -> Result<()> {
 
 /// Every transform with its parameters, in words.
 pub fn describe_transforms() -> String {
-    let mut text = String::from("Transforms of a raster; azimuths are clockwise from true north:\n");
+    let mut text = String::from(
+        "Transforms of a raster; declinations are clockwise from true north here, other directions from grid north:\n",
+    );
     for entry in Transform::list() {
         text.push_str(&format!("\n  {:<22} {}\n", entry.name, entry.gives));
         for parameter in entry.parameters {

@@ -1,7 +1,10 @@
 //! The figures of a run, made from the findings.
 
+use geo::LineString;
+
 use super::run::Findings;
 use super::series::Series;
+use super::settings::UnitRole;
 use super::slices::SliceFinding;
 use crate::coincidence::{Measure, Test, Verdict};
 use crate::conductor::{Side, outlines};
@@ -28,11 +31,15 @@ impl Findings {
                 let dense = Some(crate::evidence::Side::Right);
                 reference.contacts.iter().map(|c| ContactLine { line: c.line.clone(), dense_side: dense }).collect()
             }
-            None => {
-                let lines = self.references.iter().flat_map(|reference| &reference.lines);
-                lines.map(|line| ContactLine { line: line.clone(), dense_side: None }).collect()
-            }
+            None => Vec::new(),
         };
+        let from_maps = self.references.iter().filter(|reference| !self.series[reference.series].is_field());
+        let moved =
+            self.units.iter().zip(&self.plan.study.units).filter(|(_, choice)| choice.role == UnitRole::Subject);
+        let mapped: Vec<LineString<f64>> = from_maps
+            .flat_map(|reference| reference.lines.clone())
+            .chain(moved.flat_map(|(units, _)| units.outlines.clone()))
+            .collect();
         let deposits: Vec<Deposit> = self
             .deposits
             .iter()
@@ -57,10 +64,11 @@ impl Findings {
                 name: format!("map_{}", slice.depth),
                 title: format!("Conductors at {}", depth_label(slice.depth)),
                 description: format!(
-                    "Map of {} conductors at {} over {underneath}, with {} contact lines and {} deposits.",
+                    "Map of {} conductors at {} over {underneath}, with {} contact lines, {} mapped lines and {} deposits.",
                     shapes.len(),
                     depth_label(slice.depth),
                     lines.len(),
+                    mapped.len(),
                     deposits.len()
                 ),
                 frame,
@@ -68,6 +76,7 @@ impl Findings {
                 footprint: Some(&footprint),
                 conductors: &shapes,
                 contacts: &lines,
+                mapped: &mapped,
                 deposits: &deposits,
             }
             .draw()

@@ -20,7 +20,11 @@ impl Plan {
             |mask: &Mask| format!("{} cells ({:.0} %)", mask.count(), 100.0 * mask.count() as f64 / cells as f64);
         let mut fields = Vec::new();
         let mut text = String::from("Footprints:\n");
+        let (mapped, _) = self.read_small_files()?;
         // Writing to a String cannot fail.
+        for (choice, found) in self.study.units.iter().zip(&mapped.units) {
+            let _ = writeln!(text, "  {:<24} {}, {} features", choice.name, share(&found.mask), found.features);
+        }
         for (field, planned) in self.study.potentials.iter().zip(&self.potentials) {
             let placed = planned.layer.source.open()?.place(planned.layer.band, &self.frame, Ok)?;
             let footprint = placed.grid.footprint();

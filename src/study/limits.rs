@@ -3,7 +3,7 @@
 use super::answer::list;
 use super::references::ReferenceFinding;
 use super::run::{Findings, SubjectFinding};
-use super::settings::{Angles, MappedUnits};
+use super::settings::{Angles, MappedUnits, UnitRole};
 use crate::coincidence::Test;
 use crate::conductor::Threshold;
 use crate::evidence::{depth_label, distance_label, significant};
@@ -63,23 +63,35 @@ impl Findings {
                 continue;
             };
             let strengths = || first.contacts.iter().map(|contact| 1000.0 * contact.mean_strength);
+            let noise = format!("{} {} a cell", significant(found.noise.sigma, 2), field.kind.file_unit());
+            let known = if found.noise.is_known() {
+                format!(
+                    "Contacts of {} stand above its noise ({noise}, {}): white noise of that size gives a layer any with a \
+                     chance of at most {}. Noise is not all: texture of the ground or of the gridding makes weak contacts that \
+                     are no margin.",
+                    field.name,
+                    found.noise.origin(),
+                    field.contacts.significance
+                )
+            } else {
+                format!(
+                    "The noise of {} is not known ({noise}, {}), so how many of its contacts are noise cannot be told: quantiles \
+                     pick them, and those always find some. Give noise in the study.",
+                    field.name,
+                    found.noise.origin()
+                )
+            };
             limits.push(format!(
-                "Contacts of {} stand above its noise ({} {} a cell, {}): the chance that noise alone gives a layer any is at \
-                 most {}. Noise is not all: texture of the ground or of the gridding makes weak contacts that are no margin. \
-                 Their mean gradient runs from {} to {} {}/km (table contacts).",
-                field.name,
-                significant(found.noise.sigma, 2),
-                field.kind.file_unit(),
-                found.noise.origin(),
-                field.contacts.significance,
+                "{known} At {} m up their mean gradient runs from {} to {} {}/km (table contacts).",
+                first.height.unwrap_or(0.0).round(),
                 significant(strengths().fold(f64::INFINITY, f64::min), 2),
                 significant(strengths().fold(0.0, f64::max), 2),
                 field.kind.unit()
             ));
             if let Some(Angles { inclination, .. }) = self.plan.potentials[index].shallow_direction() {
                 limits.push(format!(
-                    "At an inclination of {}\u{b0} the pseudo-gravity of {} is damped along the declination (guard at \
-                     {LEAST_EXACT_INCLINATION}\u{b0}); margins that run along the declination are less certain.",
+                    "At an inclination of {}\u{b0} the pseudo-gravity of {} is damped (guard at {LEAST_EXACT_INCLINATION}\u{b0}) in \
+                     waves whose crests run along the declination; margins that run that way are less certain.",
                     significant(inclination, 3),
                     field.name
                 ));
@@ -116,12 +128,29 @@ impl Findings {
         })
     }
 
-    /// What was odd about the mapped units, as their reader told it.
+    /// What was odd about the mapped units, as their reader told it, and what their drawing implies.
     fn units_limits(&self) -> Vec<String> {
+        let mut limits = Vec::new();
+        if !self.units.is_empty() {
+            let names: Vec<String> = self.plan.study.units.iter().map(|units| units.name.clone()).collect();
+            limits.push(format!(
+                "{} are taken as mapped over the whole frame: ground that nobody mapped counts as outside.",
+                list(&names)
+            ));
+        }
+        let moved = self.plan.study.units.iter().any(|units| units.role == UnitRole::Subject);
+        if moved && self.plan.study.units.len() + self.plan.study.lines.len() > 1 {
+            limits.push(
+                "Units and lines of one map touch or exclude each other by the way they are drawn; nearness between them is no \
+                 evidence."
+                    .into(),
+            );
+        }
         let told = |(choice, found): (&MappedUnits, &Units)| {
             found.notes.iter().map(|note| format!("{}: {note}.", choice.name)).collect::<Vec<_>>()
         };
-        self.plan.study.units.iter().zip(&self.units).flat_map(told).collect()
+        limits.extend(self.plan.study.units.iter().zip(&self.units).flat_map(told));
+        limits
     }
 
     fn footprint_limit(&self) -> Option<String> {

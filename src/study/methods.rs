@@ -5,11 +5,11 @@ use super::contact_details::LADDER_CELLS;
 use super::fields::DENSITY_PER_MAGNETISATION;
 use super::plan::PlannedDirections;
 use super::run::Findings;
-use super::settings::{Angles, ContactChoice, PotentialKind, Resolution};
+use super::settings::{Angles, ContactChoice, FieldDirection, PotentialKind, Resolution};
 use crate::coincidence::{LEAST_OVERLAP, LONGEST_SHIFT, SMALLEST_P, VALID_LEVEL};
 use crate::conductor::Threshold;
 use crate::evidence::{Method, distance_label, significant};
-use crate::field::LEAST_EXACT_INCLINATION;
+use crate::field::{LEAST_EXACT_INCLINATION, ReferenceField};
 
 /// The steps of the run, each with the numbers used and its published source.
 pub(super) fn methods(findings: &Findings) -> Vec<Method> {
@@ -24,7 +24,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
         "Frame",
         format!(
             "All layers were placed on {} rows x {} columns of {} in {}. {} Values were averaged by area where the cells grow \
-             by more than half, and interpolated by cubic convolution otherwise, kept within the range of the file; resistivity was resampled as log10.",
+             by more than half, and interpolated by cubic convolution otherwise, and resistivity, resampled as log10, was kept within the range of the file.",
             frame.rows,
             frame.cols,
             distance_label(frame.cell),
@@ -47,8 +47,21 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
     steps.push(step(
         "Conductors",
         format!(
-            "Conductors are {threshold}, joined over edges and corners; bodies smaller than {} km\u{b2} were dropped.",
-            significant(plan.conductor_area / 1e6, 3)
+            "Conductors are {threshold}, joined over edges and corners; bodies smaller than {} km\u{b2} were dropped.{}",
+            significant(plan.conductor_area / 1e6, 3),
+            plan.study.conductivity.resistors.as_ref().map_or_else(String::new, |choice| {
+                let limit = match choice.threshold {
+                    Threshold::Quantile(quantile) => {
+                        format!("cells at or below the {quantile} quantile of log10 conductivity in each slice")
+                    }
+                    Threshold::Absolute(limit) => format!("cells above {limit} ohm m"),
+                    Threshold::Mixture => "cells on the resistive side of such a crossing".into(),
+                };
+                format!(
+                    " Resistors are {limit}, joined likewise; those smaller than {} km\u{b2} were dropped.",
+                    significant(plan.resistor_area / 1e6, 3)
+                )
+            })
         ),
         "",
     ));
@@ -64,18 +77,22 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
                 plan.share_label()
             ),
         };
-        let first =
-            planned.directions.map_or_else(String::new, |directions| pseudo_gravity(directions, plan.true_north));
+        let first = planned
+            .directions
+            .map_or_else(String::new, |directions| pseudo_gravity(field.kind, directions, plan.true_north));
         let ContactChoice { quantiles: (strong, weak), significance, .. } = field.contacts;
         steps.push(step(
             &format!("Contacts of {}", field.name),
             format!(
-                "{first}Gaps were filled for the transform and masked again, a plane was removed, and the grid was padded \
-                 beyond its edges. After upward continuation {heights}, crests of the horizontal gradient magnitude were found \
-                 by quadratic fits in four directions of a 3 x 3 window and traced into lines. A line starts at a crest above the \
-                 {strong} quantile of crest strength that noise alone would give anywhere in the layer with a chance of at most \
-                 {significance}, and is followed down to the {weak} quantile and to that chance in each cell; lines shorter than \
-                 {} were dropped. The noise of a cell, {} {} ({}), was taken as white and carried through the transforms.",
+                "{first}A plane and a sparse sheet of sources that together explain the grid were fitted; their field stands in for \
+                 the ground beyond the edges and gaps were filled by a thin plate, for the transform only. After upward \
+                 continuation {heights}, crests of the horizontal gradient magnitude were found by quadratic fits in four \
+                 directions of a 3 x 3 window and traced into lines. A line starts at a crest that is above the {strong} \
+                 quantile of all crests and that noise, in strength and in its fall to both sides, would give anywhere in the \
+                 layer with a chance of at most {significance}; it does not start where the edge makes the noise larger. It is \
+                 followed down to the {weak} quantile and to that chance in each cell; lines shorter than {} were dropped. The \
+                 noise of a cell, {} {} ({}), was taken as white and carried through the transforms; an estimate is the median power of the highest \
+                 wavenumbers of the file's own cells.",
                 distance_label(planned.least_length),
                 significant(found.noise.sigma, 2),
                 field.kind.file_unit(),
@@ -93,8 +110,8 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
                 &format!("Depth and dip of the contacts of {}", field.name),
                 format!(
                     "The depth of a contact is half the distance between the contours of -45\u{b0} and 45\u{b0} of the tilt angle \
-                     of the vertical derivative{}, less the height of continuation: right for a vertical contact of great depth \
-                     extent. Where heights do not belong to depths, each contact was looked for again {} cells higher; the \
+                     of the vertical derivative{}, on the field as it is: right for a vertical contact of great depth extent, and told only \
+                     where it stands ten deviations above the noise. Where heights do not belong to depths, each contact was looked for again {} cells higher; the \
                      drift of its crest tells which way it dips where it is faster than that of a vertical-sided body.",
                     if planned.directions.is_some() { " (which is the anomaly reduced to the pole)" } else { "" },
                     list(&LADDER_CELLS.map(|cells| cells.to_string()))
@@ -132,7 +149,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
     steps.push(step(
         "Measures",
         format!(
-            "Enrichment is the share of conductor cells within a distance of a line over the share of all cells within it. \
+            "Enrichment is the share of the subject's cells (conductors, resistors, or units that are moved) within a distance of a line over the share of all cells within it. \
              Correlation is Pearson's coefficient of log10 conductivity and gradient strength after a plane was taken out of \
              both. The mean distance, capped at {}, is described only: its level is approximate near the footprint's edge.",
             distance_label(plan.distance_cap)
@@ -142,7 +159,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
     steps.push(step(
         "Null",
         format!(
-            "The conductivity layers were displaced, without wrapping, by every whole-cell shift within an ellipse whose \
+            "The subjects were displaced, without wrapping, by every whole-cell shift within an ellipse whose \
              half-axes are {LONGEST_SHIFT} of the footprint's sides, as long as {LEAST_OVERLAP} of the overlap remained; short \
              shifts were kept. At each shift every term was computed on the remaining overlap. A statistic T at shift s with n \
              cells in the overlap was standardised as (T - mean T) sqrt(n). p is the share of shifts, the observed one \
@@ -173,7 +190,7 @@ pub(super) fn methods(findings: &Findings) -> Vec<Method> {
 }
 
 /// How magnetics became pseudo-gravity.
-fn pseudo_gravity(directions: PlannedDirections, true_north: f64) -> String {
+fn pseudo_gravity(kind: PotentialKind, directions: PlannedDirections, true_north: f64) -> String {
     let Angles { inclination, declination } = directions.field;
     let own = match directions.magnetisation {
         None => "magnetisation taken along the earth's field".to_string(),
@@ -193,9 +210,15 @@ fn pseudo_gravity(directions: PlannedDirections, true_north: f64) -> String {
     } else {
         String::new()
     };
+    let model = match kind {
+        PotentialKind::Magnetic { field: FieldDirection::Year(year), .. } => {
+            format!(" (the main field by {} in {year}, Alken et al. 2021)", ReferenceField::MODEL)
+        }
+        _ => String::new(),
+    };
     format!(
         "The anomaly was turned into pseudo-gravity with inclination {}\u{b0} and declination {}\u{b0} from true north \
-         ({}\u{b0} from the frame's grid north), {own} and {DENSITY_PER_MAGNETISATION} kg/m\u{b3} of density standing for \
+         ({}\u{b0} from the frame's grid north){model}, {own} and {DENSITY_PER_MAGNETISATION} kg/m\u{b3} of density standing for \
          1 A/m, a scale that moves no contact.{guard} ",
         significant(inclination, 4),
         significant(declination, 4),

@@ -1,6 +1,7 @@
 //! The study: its file, its plan, its run, and what is written of it.
 
 mod answer;
+mod columns;
 mod compose;
 mod contact_details;
 mod deposits;
@@ -26,6 +27,9 @@ mod settings;
 mod slices;
 mod spell;
 mod tables;
+mod tables_of_bodies;
+mod tables_of_layers;
+mod tables_of_tests;
 
 pub use compose::{NamedFiles, compose};
 pub use contact_details::ContactDetails;

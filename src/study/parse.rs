@@ -135,12 +135,13 @@ impl Place<'_> {
                 .wanted("at least one reference to test the conductors against")
                 .mend("add a [[potential]] with name and path"));
         }
+        let mapped: Vec<Spanned<String>> = keys.lines.iter().map(|keys| keys.name.clone()).chain(unit_names).collect();
         let names = keys.potential.iter().map(|keys| keys.name.clone());
-        let names = names.chain(keys.lines.iter().map(|keys| keys.name.clone())).chain(unit_names);
-        let names: Vec<Spanned<String>> = names.collect();
+        let names: Vec<Spanned<String>> = names.chain(mapped.iter().cloned()).collect();
         let potentials = keys.potential.into_iter().map(|keys| self.potential(keys)).collect::<Result<Vec<_>>>()?;
         let lines = keys.lines.into_iter().map(|keys| self.lines(keys)).collect::<Result<Vec<_>>>()?;
         self.refuse_twins(&names)?;
+        self.refuse_taken(&potentials, &mapped)?;
         let test = self.test(&keys.test)?;
         let listed = potentials.iter().find(|field| field.heights.is_some());
         if let (Resolution::Matched, Some(field)) = (test.resolution, listed) {
@@ -149,6 +150,14 @@ impl Place<'_> {
                 .found("heights beside test.resolution = \"matched\"")
                 .wanted("one of them, since matching finds the height of each slice")
                 .mend("take heights out, or write resolution = \"as-is\""));
+        }
+        let moved = units.iter().find(|units| units.role == UnitRole::Subject);
+        if let (Resolution::Matched, Some(units)) = (test.resolution, moved) {
+            return Err(self
+                .error(format!("units {:?}", units.name))
+                .found("units that are moved beside test.resolution = \"matched\"")
+                .wanted("one of them, since matched fields belong to slices and units to none")
+                .mend("write resolution = \"as-is\", or test the units in a study of their own"));
         }
         let cell = keys.frame.cell.as_ref().map(|cell| self.positive("frame.cell", "metres", cell)).transpose()?;
         Ok(Study {

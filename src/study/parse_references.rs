@@ -29,6 +29,25 @@ impl Place<'_> {
         Ok(())
     }
 
+    /// Mapped lines and units may not be called what bodies, contacts and their files are called already.
+    pub(super) fn refuse_taken(&self, fields: &[Potential], mapped: &[Spanned<String>]) -> Result<()> {
+        for name in mapped {
+            let stem = file_stem(name.get_ref().trim());
+            let of_field = |field: &Potential| {
+                let own = file_stem(&field.name);
+                stem.starts_with(&format!("{own}_")) || stem.starts_with(&format!("{own}-contacts"))
+            };
+            if ["conductors", "resistors"].contains(&stem.as_str()) || fields.iter().any(of_field) {
+                return Err(self
+                    .at("a name", name.span())
+                    .found(format!("{:?}, which bodies or contacts of a field are called", name.get_ref()))
+                    .wanted("a name of its own, since it stands in tables and file names")
+                    .mend("give it another name"));
+            }
+        }
+        Ok(())
+    }
+
     pub(super) fn potential(&self, keys: PotentialKeys) -> Result<Potential> {
         let name = self.name("the name of a [[potential]]", &keys.name)?;
         Ok(Potential {
@@ -171,12 +190,11 @@ impl Place<'_> {
         }
         let significance = match &keys.significance {
             None => default.significance(),
-            Some(level) if *level.get_ref() > 0.0 && *level.get_ref() < 1.0 => *level.get_ref(),
+            Some(level) if *level.get_ref() > 0.0 && *level.get_ref() <= 0.5 => *level.get_ref(),
             Some(level) => {
-                return Err(self
-                    .at("contacts.significance", level.span())
-                    .found(level.get_ref())
-                    .wanted("a number above 0 and below 1: the chance that noise alone gives a layer any contact"));
+                return Err(self.at("contacts.significance", level.span()).found(level.get_ref()).wanted(
+                    "a number above 0 and at most 0.5: the chance that noise alone gives a layer any contact",
+                ));
             }
         };
         let least_length = match &keys.least_length {

@@ -12,6 +12,9 @@ use crate::error::{Error, Result};
 use crate::field::{LEAST_EXACT_INCLINATION, ReferenceField, reference_field};
 use crate::grid::{Crs, Frame, Resampler, Source, carry, files_of_vector, true_north};
 
+/// A transform needs this many rows and columns.
+const LEAST_SIDE: usize = 8;
+
 /// The most cells that a potential field may use beyond the frame, so that its edges fall outside.
 const MOST_RING: usize = 64;
 
@@ -147,6 +150,14 @@ impl Plan {
         let frame = choose_extent(&crs, cell, &slices, &potentials, &mut reasons)?;
         let frame = Frame::new(crs, frame.0, frame.1, cell, frame.2, frame.3).map_err(at_study)?;
         refuse_distortion(&frame).map_err(at_study)?;
+        if frame.rows.min(frame.cols) < LEAST_SIDE && !study.potentials.is_empty() {
+            return Err(at_study(
+                Error::input("the frame's shape")
+                    .found(format!("{} rows x {} columns of {cell} m", frame.rows, frame.cols))
+                    .wanted(format!("at least {LEAST_SIDE} rows and {LEAST_SIDE} columns, which a transform needs"))
+                    .mend("choose a smaller frame.cell, or layers that overlap more"),
+            ));
+        }
         let magnetic = study.potentials.iter().any(|field| matches!(field.kind, PotentialKind::Magnetic { .. }));
         let true_north = if magnetic { true_north(&frame).map_err(at_study)? } else { 0.0 };
         let within = study.test.within.clone().unwrap_or_else(|| vec![cell, 2.0 * cell, 4.0 * cell]);
@@ -326,11 +337,19 @@ impl Plan {
         let sides = if self.study.conductivity.resistors.is_some() { "conductors and resistors" } else { "conductors" };
         let _ = writeln!(
             text,
-            "  {sides} at {} depths against {}: enrichment within {} m, and correlation;",
+            "  {sides} at {} depth{} against {}: enrichment within {} m{}{};",
             self.slices.len(),
+            if self.slices.len() == 1 { "" } else { "s" },
             self.series().into_iter().map(|series| self.series_label(series)).collect::<Vec<_>>().join(", "),
-            distances.join(", ")
+            distances.join(", "),
+            if self.series().into_iter().any(Series::is_area) { " and inside units" } else { "" },
+            if self.series().into_iter().any(Series::is_field) { ", and correlation" } else { "" }
         );
+        for units in self.study.units.iter().filter(|units| units.role == UnitRole::Subject) {
+            let met = self.series().into_iter().filter(|series| series.meets_units());
+            let met: Vec<String> = met.map(|series| self.series_label(series)).collect();
+            let _ = writeln!(text, "  {} moved over {};", units.name, met.join(", "));
+        }
         let _ = writeln!(
             text,
             "  a family of up to {} tests at the level {}; mean distance (capped at {} m) is described.",

@@ -15,9 +15,9 @@ use crate::coincidence::{Test, Verdict};
 use crate::conductor::{Side, outlines};
 use crate::error::{Error, Result};
 use crate::evidence::{
-    DepthPanel, Input, OutputFolder, Page, PageTable, Provenance, Shape, VectorLayer, depth_label, distance_label,
-    file_stem, grouped, hash_file, rfc3339, significant, write_figures, write_geopackage, write_page, write_provenance,
-    write_tables,
+    Column, DepthPanel, Input, OutputFolder, Page, PageTable, Provenance, Shape, VectorLayer, depth_label,
+    distance_label, file_stem, grouped, hash_file, rfc3339, significant, write_figures, write_geopackage, write_page,
+    write_provenance, write_tables,
 };
 use crate::grid::write_raster;
 
@@ -41,6 +41,10 @@ pub fn run_and_publish(study: &Path, options: &RunOptions, progress: &dyn Progre
     // Before any work, so that a folder that may not be written is not found out after it.
     let folder = OutputFolder::prepare(&options.out, options.replace)?;
     let plan = Plan::make(Study::read(study)?)?;
+    // A vector file or a table that is missing is refused by its reader, in its own words.
+    if plan.files().iter().any(|path| !path.exists()) {
+        plan.read_small_files()?;
+    }
     progress.stage("hashing the inputs", 1);
     let inputs = hash_inputs(&plan)?;
     progress.step();
@@ -153,10 +157,17 @@ impl Findings {
         }
         let mut verdicts: Vec<String> = self.series.iter().flat_map(|series| self.verdicts(*series, &tests)).collect();
         if verdicts.is_empty() {
-            let told = self.told(conductors);
+            let told = |bodies: bool| self.told(|test| conductors(test) && test.measure.within().is_some() == bodies);
             verdicts.push(
-                if told { "Nothing shown beyond chance at this depth." } else { "At this depth the data cannot tell." }
-                    .into(),
+                match (told(true), told(false)) {
+                    (true, _) => "Nothing shown beyond chance at this depth.",
+                    (false, true) => {
+                        "Whether conductors lie closer at this depth, the data cannot tell; conductivity is not shown to rise \
+                         with gradient strength."
+                    }
+                    (false, false) => "At this depth the data cannot tell.",
+                }
+                .into(),
             );
         }
         DepthPanel {
@@ -210,6 +221,10 @@ impl Findings {
                 fields: self.contact_columns(),
             },
         ];
+        let (mapped, fields) = self.mapped_layer();
+        if !mapped.is_empty() {
+            layers.push(VectorLayer { name: "mapped".into(), geometry: mapped, fields });
+        }
         if self.plan.study.conductivity.resistors.is_some() {
             layers.push(bodies(Side::Resistor, "resistors"));
         }
@@ -249,6 +264,36 @@ impl Findings {
             write_raster(&path, &found.placed.grid, &format!("{} on the frame", field.name), unit)?;
         }
         Ok(())
+    }
+
+    /// Mapped lines and the outlines of mapped units, cut at the frame, each with the name of its set.
+    fn mapped_layer(&self) -> (Vec<Shape>, Vec<Column>) {
+        let mut names: Vec<&str> = Vec::new();
+        let mut kinds = Vec::new();
+        let mut shapes = Vec::new();
+        let mut take = |name, kind, lines: &[geo::LineString<f64>]| {
+            for line in lines {
+                names.push(name);
+                kinds.push(kind);
+                shapes.push(Shape::Line(line.clone()));
+            }
+        };
+        for reference in &self.references {
+            if let Series::Lines(index) = self.series[reference.series] {
+                take(self.plan.study.lines[index].name.as_str(), "lines", &reference.lines);
+            }
+        }
+        for (choice, found) in self.plan.study.units.iter().zip(&self.units) {
+            take(choice.name.as_str(), "outline of units", &found.outlines);
+        }
+        let text = |name: &str, meaning: &str, values: &[&str]| {
+            Column::text(name, meaning, values.iter().map(|value| (*value).to_string()))
+        };
+        let fields = vec![
+            text("name", "Name of the set", &names),
+            text("kind", "Mapped lines, or the outline of mapped units", &kinds),
+        ];
+        (shapes, fields)
     }
 
     fn provenance(&self, inputs: Vec<Input>, options: &RunOptions, started: SystemTime) -> Provenance {

@@ -68,20 +68,13 @@ pub enum SubjectFinding {
 /// tell is no error but a verdict of the test concerned.
 pub fn run(plan: Plan, progress: &dyn Progress) -> Result<Findings> {
     // Small files first, so that what is wrong with them is told before the long work.
-    let lines = plan.study.lines.iter().map(|lines| read_lines(&lines.source, &plan.frame, plan.farthest()));
-    let lines = lines.collect::<Result<Vec<_>>>()?;
-    let units = plan.study.units.iter().map(|units| read_units(&units.source, &plan.frame));
-    let mapped = Mapped { lines, units: units.collect::<Result<Vec<Units>>>()? };
-    let deposits = match &plan.study.deposits {
-        Some(choice) => read_deposits(choice, &plan.frame)?,
-        None => Vec::new(),
-    };
+    let (mapped, deposits) = plan.read_small_files()?;
     let placed = place_slices(&plan, progress)?;
     let fields = place_fields(&plan, progress)?;
     let (placed, lengths) = match plan.study.test.resolution {
         Resolution::AsIs => (placed, None),
         Resolution::Matched => {
-            let (placed, lengths) = match_resolution(placed, &fields)?;
+            let (placed, lengths) = match_resolution(&plan, placed, &fields)?;
             (placed, Some(lengths))
         }
     };
@@ -98,6 +91,20 @@ pub fn run(plan: Plan, progress: &dyn Progress) -> Result<Findings> {
     Ok(Findings { slices, potentials, units, series, references, subjects, comparison, deposits, plan })
 }
 
+impl Plan {
+    /// Mapped lines, mapped units and deposits, as they come onto the frame.
+    ///
+    /// # Errors
+    /// What their readers refuse.
+    pub(super) fn read_small_files(&self) -> Result<(Mapped, Vec<Deposit>)> {
+        let lines = self.study.lines.iter().map(|lines| read_lines(&lines.source, &self.frame, self.farthest()));
+        let units = self.study.units.iter().map(|units| read_units(&units.source, &self.frame));
+        let mapped = Mapped { lines: lines.collect::<Result<_>>()?, units: units.collect::<Result<_>>()? };
+        let deposits = self.study.deposits.as_ref().map(|choice| read_deposits(choice, &self.frame)).transpose()?;
+        Ok((mapped, deposits.unwrap_or_default()))
+    }
+}
+
 /// The settings of the comparison.
 fn settings(plan: &Plan) -> Settings {
     Settings {
@@ -110,8 +117,15 @@ fn settings(plan: &Plan) -> Settings {
 
 /// Smooths each slice to the resolving length of the coarsest layer at its depth, which is returned for each: the slice
 /// itself, or a potential field where it is coarser.
-fn match_resolution(slices: Vec<PlacedSlice>, fields: &[PlacedField]) -> Result<(Vec<PlacedSlice>, Vec<f64>)> {
-    let fields = fields.iter().map(|field| Ok(field.prepared.gradient_power()?.resolving_length(0.0)));
+fn match_resolution(
+    plan: &Plan,
+    slices: Vec<PlacedSlice>,
+    fields: &[PlacedField],
+) -> Result<(Vec<PlacedSlice>, Vec<f64>)> {
+    let fields = fields.iter().zip(&plan.potentials).map(|(field, planned)| {
+        let power = field.prepared.gradient_power().map_err(|error| error.file(&planned.layer.source.path))?;
+        Ok(power.resolving_length(0.0))
+    });
     let coarsest = fields.collect::<Result<Vec<f64>>>()?.into_iter().fold(0.0, f64::max);
     let matched = slices.into_iter().map(|slice| {
         let length = coarsest.max(slice.resolving_length);
@@ -155,12 +169,10 @@ const LEAST_SPREAD: f64 = 1e-12;
 /// A constant layer is a mistake in the file, not a result.
 pub(super) fn refuse_constant(grid: &crate::grid::Grid, thing: &str) -> Result<()> {
     match grid.range() {
-        Some((low, high)) if high - low <= LEAST_SPREAD * low.abs().max(high.abs()).max(1.0) => {
-            Err(Error::input(thing)
-                .found(format!("the value {low} in every cell that the frame covers"))
-                .wanted("a layer that varies")
-                .mend("check the file and the band"))
-        }
+        Some((low, high)) if high - low <= LEAST_SPREAD * low.abs().max(high.abs()) => Err(Error::input(thing)
+            .found(format!("the value {low} in every cell that the frame covers"))
+            .wanted("a layer that varies")
+            .mend("check the file and the band")),
         _ => Ok(()),
     }
 }

@@ -117,7 +117,7 @@ impl Plan {
             Series::ByDepth { potential } => {
                 format!("{} (continued up {} of the depth)", contacts(potential), self.share_label())
             }
-            Series::Matched { potential } => format!("{} (at the resolution of each slice)", contacts(potential)),
+            Series::Matched { potential } => format!("{} (at a common resolution)", contacts(potential)),
             Series::Lines(index) => self.study.lines[index].name.clone(),
             Series::Units(index) => self.study.units[index].name.clone(),
         }
