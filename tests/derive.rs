@@ -157,7 +157,7 @@ fn what_cannot_be_derived_is_refused_in_words() {
         ),
         (
             &["tilt", "gravity.tif", "--onto", "EPSG:3857", "--out", "o.tif"],
-            "salband: gravity.tif: the frame's coordinate system: found EPSG:3857, in which a metre is 0.637 m on the ground here; wanted a system made for the area, in which a metre is a metre. To mend it: name a system made for the area with --onto EPSG:CODE.",
+            "salband: gravity.tif: the frame's coordinate system: found EPSG:3857, in which a metre is 0.638 m on the ground here; wanted a system made for the area, in which a metre is a metre. To mend it: name a system made for the area with --onto EPSG:CODE.",
         ),
         (
             &["tilt", "gravity.tif", "--cell", "nan", "--out", "o.tif"],
