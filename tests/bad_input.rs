@@ -95,6 +95,11 @@ fn cases() -> Vec<Case> {
             "salband: study.toml: heights: found an empty list; wanted at least one height in metres. To mend it: take the key out to have heights tied to the depths of the slices.",
         ),
         case(
+            "a height beyond the frame",
+            |s| s.study("kind = \"gravity\"", "heights = [0.0, 50000.0]"),
+            "salband: study.toml: heights of potential \"gravity\": found 50000 m; wanted at most the frame's longer side, 40000 m: nothing of the field is left higher up. To mend it: check that heights are in metres.",
+        ),
+        case(
             "heights beside matching",
             |s| {
                 let text = STUDY.replace("kind = \"gravity\"", "heights = [0.0]");

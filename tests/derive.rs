@@ -106,7 +106,7 @@ fn what_cannot_be_derived_is_refused_in_words() {
         Raster { crs: Some(4326), origin: (15.0, 50.0), cell: 0.01, ..Raster::of(&|row, col| (row * col) as f64) };
     survey.raster("degrees.tif", &degrees);
     survey.file("there.tif", "something of the user's");
-    let cases: [(&[&str], &str); 14] = [
+    let cases: [(&[&str], &str); 15] = [
         (
             &["upward", "gravity.tif", "--out", "o.tif"],
             "salband: the transform upward: found no height; wanted height (m). To mend it: give height a number.",
@@ -150,6 +150,10 @@ fn what_cannot_be_derived_is_refused_in_words() {
         (
             &["tilt", "gravity.tif", "--out", "nowhere/o.tif"],
             "salband: nowhere/o.tif: the file to write: found no such folder; wanted the path of a GeoTIFF in a folder that exists. To mend it: choose another path, or make the folder first.",
+        ),
+        (
+            &["tilt", "gravity.tif", "--with", "height=1e9", "--out", "o.tif"],
+            "salband: gravity.tif: the height: found 1000000000 m; wanted at most the raster's longer side, 40000 m: nothing of the field is left higher up. To mend it: check that it is in metres.",
         ),
         (
             &["tilt", "gravity.tif", "--cell", "1e7", "--out", "o.tif"],

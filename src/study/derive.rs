@@ -91,6 +91,17 @@ pub fn derive_raster(choice: &Derivation) -> Result<String> {
     }
     let another = "name a system made for the area with --onto EPSG:CODE";
     refuse_distortion(&frame).map_err(|error| at_raster(error).mend(another))?;
+    let longest = frame.rows.max(frame.cols) as f64 * frame.cell;
+    if let Some(height) = choice.parameters.get("height").filter(|height| **height > longest) {
+        return Err(at_raster(
+            Error::input("the height")
+                .found(format!("{height} m"))
+                .wanted(format!(
+                    "at most the raster's longer side, {longest} m: nothing of the field is left higher up"
+                ))
+                .mend("check that it is in metres"),
+        ));
+    }
     let transform = Transform::named(&choice.transform, &from_grid_north(&choice.parameters, &frame)?)?;
     let placed = raster.place(choice.band, &frame, Ok)?;
     let product = derive(&placed.grid, &transform).map_err(at_raster)?;

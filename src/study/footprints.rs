@@ -23,7 +23,7 @@ impl Plan {
         let (mapped, _) = self.read_small_files()?;
         // Writing to a String cannot fail.
         for (choice, found) in self.study.units.iter().zip(&mapped.units) {
-            let _ = writeln!(text, "  {:<24} {}, {} features", choice.name, share(&found.mask), found.features);
+            let _ = writeln!(text, "  {:<24} {}, features kept: {}", choice.name, share(&found.mask), found.features);
         }
         for (field, planned) in self.study.potentials.iter().zip(&self.potentials) {
             let placed = planned.layer.source.open()?.place(planned.layer.band, &self.frame, Ok)?;

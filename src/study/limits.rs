@@ -1,6 +1,6 @@
 //! What limits the answer because of the layers themselves: thresholds, contacts, cells, footprint.
 
-use super::answer::list;
+use super::answer::{capital, list};
 use super::references::ReferenceFinding;
 use super::run::{Findings, SubjectFinding};
 use super::settings::{Angles, MappedUnits, UnitRole};
@@ -82,8 +82,11 @@ impl Findings {
                 )
             };
             limits.push(format!(
-                "{known} At {} m up their mean gradient runs from {} to {} {}/km (table contacts).",
-                first.height.unwrap_or(0.0).round(),
+                "{known} {} their mean gradient runs from {} to {} {}/km (table contacts).",
+                match first.height {
+                    Some(height) if height > 0.0 => format!("Continued up {},", distance_label(height.round())),
+                    _ => "In the field as it is".into(),
+                },
                 significant(strengths().fold(f64::INFINITY, f64::min), 2),
                 significant(strengths().fold(0.0, f64::max), 2),
                 field.kind.unit()
@@ -134,8 +137,8 @@ impl Findings {
         if !self.units.is_empty() {
             let names: Vec<String> = self.plan.study.units.iter().map(|units| units.name.clone()).collect();
             limits.push(format!(
-                "{} are taken as mapped over the whole frame: ground that nobody mapped counts as outside.",
-                list(&names)
+                "{}: taken as mapped over the whole frame, so that ground that nobody mapped counts as outside.",
+                capital(&list(&names))
             ));
         }
         let moved = self.plan.study.units.iter().any(|units| units.role == UnitRole::Subject);

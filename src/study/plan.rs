@@ -158,6 +158,19 @@ impl Plan {
                     .mend("choose a smaller frame.cell, or layers that overlap more"),
             ));
         }
+        let longest = frame.rows.max(frame.cols) as f64 * cell;
+        for field in &study.potentials {
+            if let Some(height) = field.heights.iter().flatten().find(|height| **height > longest) {
+                return Err(at_study(
+                    Error::input(format!("heights of potential {:?}", field.name))
+                        .found(format!("{height} m"))
+                        .wanted(format!(
+                            "at most the frame's longer side, {longest} m: nothing of the field is left higher up"
+                        ))
+                        .mend("check that heights are in metres"),
+                ));
+            }
+        }
         let magnetic = study.potentials.iter().any(|field| matches!(field.kind, PotentialKind::Magnetic { .. }));
         let true_north = if magnetic { true_north(&frame).map_err(at_study)? } else { 0.0 };
         let within = study.test.within.clone().unwrap_or_else(|| vec![cell, 2.0 * cell, 4.0 * cell]);
