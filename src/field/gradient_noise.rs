@@ -81,8 +81,7 @@ impl GradientNoise {
         directions: MagneticDirections,
         ratio: f64,
     ) -> Result<Self> {
-        let ratio = super::pole::checked_ratio(ratio)?;
-        Self::new(sigma, cell, height, 0, |wave| directions.to_pseudo_gravity(ratio, wave).norm_sqr())
+        Self::of_magnetics((sigma, cell, height), 0, directions, ratio)
     }
 
     /// For the gradient of the first vertical derivative of the pseudo-gravity, mGal/m, of a magnetic layer.
@@ -96,8 +95,18 @@ impl GradientNoise {
         directions: MagneticDirections,
         ratio: f64,
     ) -> Result<Self> {
+        Self::of_magnetics((sigma, cell, height), 1, directions, ratio)
+    }
+
+    /// For pseudo-gravity after `order` vertical derivatives.
+    fn of_magnetics(
+        (sigma, cell, height): (f64, f64, f64),
+        order: i32,
+        directions: MagneticDirections,
+        ratio: f64,
+    ) -> Result<Self> {
         let ratio = super::pole::checked_ratio(ratio)?;
-        Self::new(sigma, cell, height, 1, |wave| directions.to_pseudo_gravity(ratio, wave).norm_sqr())
+        Self::new(sigma, cell, height, order, |wave| directions.to_pseudo_gravity(ratio, wave).norm_sqr())
     }
 
     /// For |F|^2 |k|^2 = gain(direction) |k|^(2 order), where `gain` is given waves of unit length.

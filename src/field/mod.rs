@@ -44,7 +44,7 @@ pub use gradient_noise::GradientNoise;
 pub use noise::{NoiseEstimate, estimate_noise};
 pub use pole::LEAST_EXACT_INCLINATION;
 pub use prepare::{
-    PreparedField, horizontal_gradient_magnitude, tilt_derivative, upward_continuation, vertical_derivative,
+    LEAST_SIDE, PreparedField, horizontal_gradient_magnitude, tilt_derivative, upward_continuation, vertical_derivative,
 };
 pub use reference_field::{ReferenceField, reference_field};
 pub use regional::{Regional, regional};

@@ -14,7 +14,7 @@ use crate::error::{Error, Result};
 use crate::grid::{Frame, Grid, Mask, Plane};
 
 /// The fewest rows and columns that can be transformed.
-const LEAST_SIDE: usize = 8;
+pub const LEAST_SIDE: usize = 8;
 
 /// A potential field whose gaps are filled, whose plane is set aside and whose spectrum is known.
 ///

@@ -47,8 +47,8 @@ pub(super) fn details(
     Ok(depths.into_iter().zip(persistence).map(|(depth, persistence)| ContactDetails { depth, persistence }).collect())
 }
 
-/// A depth is told where the gradient of the vertical derivative stands this many deviations above the noise, along at least
-/// half of the contact: the tilt angle of what is weaker is that of the noise, and comes out too shallow.
+/// A depth is told where the gradient of the vertical derivative stands this many deviations above the noise (our convention),
+/// along at least half of the contact: the tilt angle of what is weaker is that of the noise, and comes out too shallow.
 const CLEAR: f64 = 10.0;
 
 /// Depths below the ground by the tilt angle of the vertical derivative, which for pseudo-gravity is the anomaly reduced to

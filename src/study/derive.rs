@@ -6,14 +6,11 @@ use std::path::{Path, PathBuf};
 use super::frame_choice::refuse_distortion;
 use crate::error::{Error, Result};
 use crate::evidence::significant;
-use crate::field::{Transform, derive};
+use crate::field::{LEAST_SIDE, Transform, derive};
 use crate::grid::{Crs, Frame, Raster, Source, true_north, write_raster};
 
 /// Parameters that are azimuths from true north, as reference models give them.
 const AZIMUTHS: [&str; 2] = ["declination", "magnetisation-declination"];
-
-/// A transform needs this many rows and columns.
-const LEAST_SIDE: usize = 8;
 
 /// What to derive, from what, to where.
 #[derive(Debug, Clone)]

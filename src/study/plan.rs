@@ -9,11 +9,8 @@ use super::series::Series;
 use super::settings::{Angles, ContactChoice, FieldDirection, Potential, PotentialKind, Study, UnitRole};
 use crate::contact::ContactSettings;
 use crate::error::{Error, Result};
-use crate::field::{LEAST_EXACT_INCLINATION, ReferenceField, reference_field};
+use crate::field::{LEAST_EXACT_INCLINATION, LEAST_SIDE, ReferenceField, reference_field};
 use crate::grid::{Crs, Frame, Resampler, Source, carry, files_of_vector, true_north};
-
-/// A transform needs this many rows and columns.
-const LEAST_SIDE: usize = 8;
 
 /// The most cells that a potential field may use beyond the frame, so that its edges fall outside.
 const MOST_RING: usize = 64;

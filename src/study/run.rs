@@ -11,7 +11,7 @@ use super::slices::{PlacedSlice, SliceFinding, find_bodies_of, place_slices};
 use crate::coincidence::{Comparison, Reference, Settings, Subject, compare};
 use crate::conductor::Side;
 use crate::error::{Error, Result};
-use crate::grid::{Mask, Placed, Units, read_lines, read_units};
+use crate::grid::{Grid, Mask, Placed, Units, read_lines, read_units};
 
 /// All that a run has found.
 #[derive(Debug)]
@@ -167,7 +167,7 @@ fn subjects(plan: &Plan, slices: &[SliceFinding], units: &[Units]) -> (Vec<Subje
 const LEAST_SPREAD: f64 = 1e-12;
 
 /// A constant layer is a mistake in the file, not a result.
-pub(super) fn refuse_constant(grid: &crate::grid::Grid, thing: &str) -> Result<()> {
+pub(super) fn refuse_constant(grid: &Grid, thing: &str) -> Result<()> {
     match grid.range() {
         Some((low, high)) if high - low <= LEAST_SPREAD * low.abs().max(high.abs()) => Err(Error::input(thing)
             .found(format!("the value {low} in every cell that the frame covers"))
